@@ -1,0 +1,1 @@
+//! Levels become ranked candidates of bands.

@@ -1,0 +1,1 @@
+//! Companions, missing bands, advice, screening.

@@ -1,0 +1,5 @@
+//! The program: one sentence.
+
+fn main() -> std::process::ExitCode {
+    bandwright::cli::run(std::env::args_os()).into()
+}

@@ -1,0 +1,1 @@
+//! A spectrum becomes bands: continuum, centres, widths, noise.

@@ -1,0 +1,1 @@
+//! One report record, one function a format.
