@@ -1,7 +1,22 @@
 //! The command line: a file per command; arguments become library types before anything runs.
+//!
+//! Every command is a clap `Args` struct with `run(self) -> Result<Outcome, Failure>` in its own file below `cli/`, and
+//! one variant of [`Command`]. Data goes to standard output or `--out FILE`; notes and progress to standard error.
+
+/// Shared options: output format and destination.
+pub mod output;
+
+/// `tables`: what is bundled.
+pub mod tables;
 
 use std::ffi::OsString;
+use std::io::Write;
 use std::process::ExitCode;
+
+use clap::{CommandFactory, Parser, Subcommand};
+
+use crate::note::Note;
+use crate::read::Complaints;
 
 /// How a run ended; the exit code of the process.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -24,8 +39,74 @@ impl From<Outcome> for ExitCode {
     }
 }
 
+/// Why a command could not answer.
+#[derive(Debug, thiserror::Error)]
+pub enum Failure {
+    /// The input files are unusable.
+    #[error("{0}")]
+    Input(#[from] Complaints),
+    /// The command line asks for something that cannot be done.
+    #[error("error: {0}")]
+    Usage(String),
+    /// Writing failed.
+    #[error("error: cannot write {target}: {error}")]
+    Write {
+        /// Where to.
+        target: String,
+        /// What the system said.
+        error: std::io::Error,
+    },
+}
+
+/// Overtones and combinations of hydrated salts: predict them, assign observed bands, plan the next measurement.
+#[derive(Debug, Parser)]
+#[command(name = "bandwright", version, arg_required_else_help = true)]
+pub struct Arguments {
+    /// What to do.
+    #[command(subcommand)]
+    pub command: Command,
+}
+
+/// The commands.
+#[derive(Debug, Subcommand)]
+pub enum Command {
+    /// What is bundled, with sources.
+    Tables(tables::Tables),
+}
+
+/// Prints notes to standard error, one a line.
+pub fn tell(notes: &[Note]) {
+    let mut err = std::io::stderr().lock();
+    for note in notes {
+        // A closed standard error is no reason to fail.
+        let _ = writeln!(err, "note: {note}");
+    }
+}
+
+/// The command-line definition, for completions and the manual page.
+pub fn definition() -> clap::Command {
+    Arguments::command()
+}
+
 /// Runs the program with these arguments (the first is the program's name).
 pub fn run(arguments: impl IntoIterator<Item = OsString>) -> Outcome {
-    let _ = arguments;
-    Outcome::Unusable
+    let arguments = match Arguments::try_parse_from(arguments) {
+        Ok(arguments) => arguments,
+        Err(error) => {
+            let _ = error.print();
+            return if error.use_stderr() { Outcome::Unusable } else { Outcome::Done };
+        }
+    };
+    let result = match arguments.command {
+        Command::Tables(command) => command.run(),
+    };
+    match result {
+        Ok(outcome) => outcome,
+        // A reader that closed the pipe has seen enough.
+        Err(Failure::Write { error, .. }) if error.kind() == std::io::ErrorKind::BrokenPipe => Outcome::Done,
+        Err(failure) => {
+            let _ = writeln!(std::io::stderr().lock(), "{failure}");
+            Outcome::Unusable
+        }
+    }
 }

@@ -181,7 +181,7 @@ pub struct Mode {
     /// What it does.
     pub motion: Motion,
     /// Position of the fundamental (v = 1; |l| = 1 when degenerate); for a table read with `basis: harmonic` this is
-    /// still the harmonic wavenumber until [`crate::physics`] converts it.
+    /// still the harmonic wavenumber until the physics room converts it.
     pub wavenumber: Wavenumber,
     /// One standard uncertainty, cm⁻¹.
     pub sigma: f64,
