@@ -6,6 +6,9 @@
 /// Shared options: output format and destination.
 pub mod output;
 
+/// Inputs named on the command line.
+pub mod input;
+
 /// `tables`: what is bundled.
 pub mod tables;
 

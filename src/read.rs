@@ -9,4 +9,16 @@ pub mod error;
 /// Delimited text: separators, decimal commas, header, cells with their places.
 pub mod delimited;
 
+/// Mode tables.
+pub mod mode_table;
+
+/// Constants of the modes of one table.
+pub mod constants;
+
+/// Observed bands of one sample.
+pub mod band_list;
+
+/// What related samples show.
+pub mod companions;
+
 pub use error::{Complaint, Complaints, Location};

@@ -369,6 +369,11 @@ impl<'a> Delimited<'a> {
         self.header.iter().position(|cell| cell.text == name)
     }
 
+    /// The cell of `row` in the column called `name`, when there is one and it is not empty.
+    pub fn filled(&self, row: &[Cell<'a>], name: &str) -> Option<Cell<'a>> {
+        self.column(name).and_then(|at| row.get(at)).filter(|cell| !cell.text.is_empty()).cloned()
+    }
+
     /// The metadatum called `key`; the last one when it is given twice.
     pub fn metadatum(&self, key: &str) -> Option<&Cell<'a>> {
         self.metadata.iter().rev().find(|m| m.key == key).map(|m| &m.value)
