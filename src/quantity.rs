@@ -160,6 +160,124 @@ impl AxisUnit {
     }
 }
 
+/// A stretch of the spectrum, as vacuum wavenumbers in cm⁻¹. Invariant: 0 ≤ low < high, both finite.
+#[derive(Clone, Copy, Debug, PartialEq, Serialize)]
+pub struct Window {
+    low: f64,
+    high: f64,
+}
+
+/// Why a text is not a window, with what to write instead.
+#[derive(Clone, Debug, PartialEq, Eq, thiserror::Error)]
+#[error(
+    "`{text}` is not a window: {reason}\n  hint: write two ends and a unit, like 1.0:2.6um, 1000:2600nm or 4000:8000cm-1"
+)]
+pub struct NotAWindow {
+    /// What was written.
+    pub text: String,
+    /// What is wrong with it.
+    pub reason: String,
+}
+
+impl Window {
+    /// Below this a number without a unit is more likely a wavelength in µm: the user is asked, nothing is assumed.
+    const LOWEST_WITHOUT_UNIT: f64 = 100.0;
+
+    /// The window between two vacuum wavenumbers in cm⁻¹, in either order; `None` when they are equal, negative or not
+    /// finite.
+    pub fn between(one: f64, other: f64) -> Option<Self> {
+        let (low, high) = if one <= other { (one, other) } else { (other, one) };
+        (low >= 0.0 && low < high && high.is_finite()).then_some(Self { low, high })
+    }
+
+    /// The window a person wrote: two ends in either order, separated by `:`, `..`, `–`, `-` or ` to `, and a unit
+    /// behind the second end or behind both. Without a unit the ends are wavenumbers, unless they are so small that
+    /// micrometres may be meant: that is an error. `medium` matters for wavelengths only.
+    ///
+    /// # Errors
+    /// [`NotAWindow`] with the reason.
+    pub fn from_text(text: &str, medium: Medium) -> Result<Self, NotAWindow> {
+        let refuse = |reason: &str| {
+            let text = text.chars().take(60).flat_map(char::escape_debug).collect();
+            NotAWindow { text, reason: reason.to_owned() }
+        };
+        let plain = text.trim().replace('\u{2212}', "-").replace("⁻¹", "-1");
+        let (first, second) = halves(&plain).ok_or_else(|| refuse("it has not two ends"))?;
+        let ((first, first_unit), (second, second_unit)) = (number_and_unit(first), number_and_unit(second));
+        let number = |part: &str| part.parse::<f64>().ok().filter(|v| v.is_finite() && *v >= 0.0);
+        let (Some(first), Some(second)) = (number(first), number(second)) else {
+            return Err(refuse("an end is not a number, or is negative"));
+        };
+        let unit = |word: &str| match word.is_empty() {
+            true => Ok(None),
+            false => AxisUnit::from_text(word).map(Some).ok_or_else(|| refuse("the unit is not um, nm or cm-1")),
+        };
+        let (unit_of_first, unit_of_second) = (unit(first_unit)?, unit(second_unit)?);
+        let Some(second_unit) = unit_of_second.or(unit_of_first) else {
+            if first.min(second) < Self::LOWEST_WITHOUT_UNIT {
+                return Err(refuse("it has no unit, and micrometres may be meant"));
+            }
+            return Self::between(first, second).ok_or_else(|| refuse("its ends are equal"));
+        };
+        let at = |value: f64, unit: AxisUnit| {
+            let wavenumber = unit.wavenumber(value, medium).map_err(|_| refuse("a wavelength must be above zero"))?;
+            Ok(wavenumber.inverse_cm())
+        };
+        let (one, other) = (at(first, unit_of_first.unwrap_or(second_unit))?, at(second, second_unit)?);
+        Self::between(one, other).ok_or_else(|| refuse("its ends are equal"))
+    }
+
+    /// Lower end, cm⁻¹.
+    pub fn low(self) -> f64 {
+        self.low
+    }
+
+    /// Upper end, cm⁻¹.
+    pub fn high(self) -> f64 {
+        self.high
+    }
+
+    /// Whether a wavenumber in cm⁻¹ lies inside, the ends included.
+    pub fn contains(self, wavenumber: f64) -> bool {
+        self.low <= wavenumber && wavenumber <= self.high
+    }
+}
+
+/// The two ends of a written window. A hyphen separates only behind a digit or unit letter and before a digit or point,
+/// so that the one in `cm-1` and the one of an exponent stay where they are.
+fn halves(text: &str) -> Option<(&str, &str)> {
+    for separator in [":", "..", "–", "—", " to "] {
+        if let Some((first, second)) = text.split_once(separator) {
+            return Some((first.trim(), second.trim()));
+        }
+    }
+    text.match_indices('-').find_map(|(at, _)| {
+        let (first, second) = (text[..at].trim_end(), text[at + 1..].trim_start());
+        let lower = first.to_lowercase();
+        let inside = lower.is_empty()
+            || lower.ends_with("cm")
+            || lower.ends_with("cm^")
+            || lower.ends_with("cm^(")
+            || lower.strip_suffix('e').is_some_and(|rest| rest.ends_with(|c: char| c.is_ascii_digit() || c == '.'));
+        (!inside && second.starts_with(|c: char| c.is_ascii_digit() || c == '.')).then_some((first, second))
+    })
+}
+
+/// A number and the unit behind it; an `e` belongs to the number when digits follow.
+fn number_and_unit(text: &str) -> (&str, &str) {
+    let mut end = 0;
+    let mut characters = text.char_indices().peekable();
+    while let Some((at, c)) = characters.next() {
+        let exponent = matches!(c, 'e' | 'E') && characters.peek().is_some_and(|(_, n)| "+-0123456789".contains(*n));
+        let sign = matches!(c, '+' | '-') && (at == 0 || text[..at].ends_with(['e', 'E']));
+        if !(c.is_ascii_digit() || c == '.' || exponent || sign) {
+            break;
+        }
+        end = at + c.len_utf8();
+    }
+    (&text[..end], text[end..].trim())
+}
+
 /// Refractivity (n − 1) of standard air at a vacuum wavelength in µm.
 ///
 /// # Method and source
@@ -210,6 +328,51 @@ mod tests {
             assert_eq!(AxisUnit::from_text(text), Some(AxisUnit::InverseCentimetre), "{text}");
         }
         assert_eq!(AxisUnit::from_text("furlong"), None);
+    }
+
+    #[test]
+    fn a_window_is_read_in_the_forms_people_write() {
+        let vacuum = |text: &str| Window::from_text(text, Medium::Vacuum).map(|w| (w.low(), w.high()));
+        for text in [
+            "4000:8000",
+            "8000:4000",
+            "4000-8000cm-1",
+            "4000 - 8000 cm^-1",
+            "4000..8000 cm⁻¹",
+            "4e3-8e3cm-1",
+            "4000 to 8000",
+            "4000cm-1:8000cm-1",
+            "4000cm-1-8000cm-1",
+            "4000–8000",
+            "2.5:1.25um",
+            "1.25um-2500nm",
+            "1.25-2.5 µm",
+            "1250:2500nm",
+            "4000:1.25um",
+        ] {
+            // The last form names one unit only, so it means 4000 µm and is not the same window.
+            let expected = if text == "4000:1.25um" { (2.5, 8000.0) } else { (4000.0, 8000.0) };
+            let (low, high) = vacuum(text).unwrap();
+            assert!((low - expected.0).abs() < 1e-9 && (high - expected.1).abs() < 1e-9, "{text}: {low} to {high}");
+        }
+        // 1.0 µm in standard air is 9997.26 cm⁻¹: n − 1 = 2.741e-4 by Ciddor's formula at 1 µm.
+        let air = Window::from_text("1.0:2.6um", Medium::Air).unwrap();
+        assert!((air.high() - 9997.26).abs() < 0.01, "{}", air.high());
+        for (text, word) in [
+            ("", "two ends"),
+            ("4000", "two ends"),
+            ("1.0:2.6", "no unit"),
+            ("0:2um", "above zero"),
+            ("4000:4000", "equal"),
+            ("a:b", "not a number"),
+            ("1:2furlong", "unit"),
+            ("-5:10um", "negative"),
+            ("1:nan", "not a number"),
+            ("1e999:5um", "not a number"),
+        ] {
+            let message = vacuum(text).unwrap_err().to_string();
+            assert!(message.contains(word) && message.contains("1.0:2.6um"), "{text}: {message}");
+        }
     }
 
     #[test]
