@@ -9,8 +9,17 @@ pub mod output;
 /// Inputs named on the command line.
 pub mod input;
 
+/// `predict`: where a table absorbs.
+pub mod predict;
+
+/// `check`: faults and doubts of tables.
+pub mod check;
+
 /// `tables`: what is bundled.
 pub mod tables;
+
+/// `completions` and `manual`: from the same definitions.
+pub mod manual;
 
 use std::ffi::OsString;
 use std::io::Write;
@@ -73,8 +82,16 @@ pub struct Arguments {
 /// The commands.
 #[derive(Debug, Subcommand)]
 pub enum Command {
+    /// Where a table absorbs: levels, uncertainty, species, strength class.
+    Predict(predict::Predict),
+    /// Faults and doubts of mode tables.
+    Check(check::Check),
     /// What is bundled, with sources.
     Tables(tables::Tables),
+    /// Shell completions.
+    Completions(manual::Completions),
+    /// The manual page.
+    Manual(manual::Manual),
 }
 
 /// Prints notes to standard error, one a line.
@@ -101,7 +118,11 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> Outcome {
         }
     };
     let result = match arguments.command {
+        Command::Predict(command) => command.run(),
+        Command::Check(command) => command.run(),
         Command::Tables(command) => command.run(),
+        Command::Completions(command) => command.run(),
+        Command::Manual(command) => command.run(),
     };
     match result {
         Ok(outcome) => outcome,

@@ -1,1 +1,7 @@
 //! Which levels fall in a window, each once, the same for any number of threads.
+
+/// Predicted transitions of a table.
+pub mod prediction;
+
+/// The pruned walk.
+pub mod walk;

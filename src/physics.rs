@@ -2,3 +2,21 @@
 
 /// Positions and uncertainties of levels from a resolved set of constants.
 pub mod position;
+
+/// Constants of a table resolved into a model.
+pub mod anharmonicity;
+
+/// Expected strengths and widths.
+pub mod strength;
+
+/// Faults and doubts of a table.
+pub mod table_faults;
+
+/// Two OH bonds of one water.
+pub mod local_pair;
+
+/// Resonances and polyads.
+pub mod resonance;
+
+/// Point groups.
+pub mod symmetry;

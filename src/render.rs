@@ -2,3 +2,15 @@
 
 /// Mode tables and constants as files.
 pub mod mode_table;
+
+/// The records that every format is a function of.
+pub mod report;
+
+/// Aligned text.
+pub mod text;
+
+/// `predict` in every format.
+pub mod predict;
+
+/// From answers to records.
+pub mod records;

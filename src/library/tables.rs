@@ -15,6 +15,7 @@ pub struct Bundled {
 }
 
 /// `bundle!(name)` or `bundle!(name + constants)`.
+#[allow(unused_macros)]
 macro_rules! bundle {
     ($name:literal) => {
         Bundled { name: $name, modes: include_str!(concat!("../../mode_tables/", $name, ".csv")), constants: None }

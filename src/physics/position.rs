@@ -92,8 +92,6 @@ pub enum Parameter {
     X(usize, usize),
     /// g_ii.
     G(usize),
-    /// Entry of [`Model::g_pairs`].
-    GPair(usize),
 }
 
 /// A position's derivatives by the parameters it depends on: (parameter, derivative), in a fixed order.
@@ -179,24 +177,20 @@ impl Model {
                 sum += v * f64::from(other.quanta) * self.x(i, usize::from(other.mode)).value;
             }
         }
-        for (a, b, g) in &self.g_pairs {
-            sum += g.value * self.pair_momentum(level, *a, *b);
-        }
         sum
     }
 
-    fn pair_momentum(&self, level: &Level, a: ModeIndex, b: ModeIndex) -> f64 {
-        let l_of =
-            |mode: ModeIndex| {
-                level.excitations().iter().find(|e| usize::from(e.mode) == mode).map_or(0.0, |e| {
-                    if e.l == UNSPLIT { if e.quanta == 1 { 1.0 } else { 0.0 } } else { f64::from(e.l) }
-                })
-            };
-        // For one quantum in each of two E modes l_a l_b is +1 or −1: the centre is reported, not one component.
-        if self.degeneracy[a] == 2 && self.degeneracy[b] == 2 && level.quanta_in(a) == 1 && level.quanta_in(b) == 1 {
-            return 0.0;
-        }
-        l_of(a) * l_of(b)
+    /// Term of a state with signed angular momenta, cm⁻¹ above the ground level: `(mode, v, l)`, l ignored for
+    /// non-degenerate modes. Two degenerate modes with a given gᵢⱼ split by the sign of lᵢ lⱼ; a [`Level`] carries |l|
+    /// only and stands for their centre.
+    pub fn term(&self, state: &[(ModeIndex, u8, i32)]) -> f64 {
+        let level = Level::new(state.iter().map(|&(mode, v, l)| {
+            let l = u8::try_from(l.unsigned_abs()).unwrap_or(UNSPLIT);
+            Excitation { l: if self.degeneracy[mode] > 1 { l } else { UNSPLIT }, ..Excitation::new(mode, v) }
+        }));
+        let momentum = |mode: ModeIndex| state.iter().find(|s| s.0 == mode).map_or(0, |s| s.2);
+        let pairs = self.g_pairs.iter().map(|(a, b, g)| g.value * f64::from(momentum(*a) * momentum(*b)));
+        self.position(&level) + pairs.sum::<f64>()
     }
 
     /// Derivatives of [`Self::position`] by the parameters.
@@ -219,12 +213,6 @@ impl Model {
                 gradient.push((Parameter::X(i, usize::from(other.mode)), v * f64::from(other.quanta)));
             }
         }
-        for (at, (a, b, _)) in self.g_pairs.iter().enumerate() {
-            let factor = self.pair_momentum(level, *a, *b);
-            if factor != 0.0 {
-                gradient.push((Parameter::GPair(at), factor));
-            }
-        }
         gradient
     }
 
@@ -234,7 +222,6 @@ impl Model {
             Parameter::Nu(i) => self.nu_sigma[i],
             Parameter::X(i, j) => self.x(i, j).sigma,
             Parameter::G(i) => self.g[i].as_ref().map_or(0.0, |g| g.sigma),
-            Parameter::GPair(at) => self.g_pairs[at].2.sigma,
         }
     }
 
@@ -244,7 +231,6 @@ impl Model {
             Parameter::Nu(i) => self.nu[i],
             Parameter::X(i, j) => self.x(i, j).value,
             Parameter::G(i) => self.g[i].as_ref().map_or(0.0, |g| g.value),
-            Parameter::GPair(at) => self.g_pairs[at].2.value,
         }
     }
 
@@ -257,7 +243,14 @@ impl Model {
             .filter(|e| e.quanta > 1)
             .map(|e| (self.l_spread[usize::from(e.mode)] * f64::from(e.quanta)).powi(2))
             .sum();
-        floor * floor + spread
+        // The two components ±gᵢⱼ lᵢ lⱼ are not told apart.
+        let pairs: f64 = self
+            .g_pairs
+            .iter()
+            .filter(|(a, b, _)| level.quanta_in(*a) > 0 && level.quanta_in(*b) > 0)
+            .map(|(_, _, g)| g.value * g.value)
+            .sum();
+        floor * floor + spread + pairs
     }
 
     /// Variance of the position: a′Ca + private part, cm⁻².

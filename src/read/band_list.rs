@@ -8,7 +8,7 @@ use super::error::{Complaint, Complaints};
 use super::mode_table::{not_negative, positive, strength};
 use crate::band::{Band, BandList, Feature};
 use crate::note::{Note, Noted};
-use crate::quantity::{AxisUnit, Medium, Wavenumber};
+use crate::quantity::{AxisUnit, Medium, Window};
 
 const COLUMNS: [&str; 9] = ["band", "position", "unit", "sigma", "fwhm", "strength", "feature", "note", "source"];
 
@@ -70,9 +70,9 @@ pub fn read(name: &str, text: &str) -> Result<Noted<BandList>, Complaints> {
         list.sample = cell.text.clone();
     }
     if let Some(cell) = sheet.metadatum("range").filter(|cell| !cell.text.is_empty()) {
-        match range(&cell.text, list.medium) {
-            Some(range) => list.range = Some(range),
-            None => {
+        match Window::from_text(&cell.text, list.medium) {
+            Ok(window) => list.range = Some((window.low(), window.high())),
+            Err(_) => {
                 complaints.0.push(cell.complain("a range with its unit").hint("like `1.0:2.6 um` or `4000:8000 cm-1`"))
             }
         }
@@ -176,23 +176,4 @@ pub fn read(name: &str, text: &str) -> Result<Noted<BandList>, Complaints> {
         }
     }
     complaints.or(Noted { value: list, notes })
-}
-
-/// A range such as `1.0:2.6 um`, ascending in cm⁻¹.
-fn range(text: &str, medium: Medium) -> Option<(f64, f64)> {
-    let text = text.trim();
-    let unit_start = ["cm-1", "cm^-1", "cm⁻¹", "um", "µm", "μm", "nm"]
-        .into_iter()
-        .find_map(|unit| text.to_lowercase().ends_with(unit).then(|| text.len() - unit.len()));
-    let (numbers, unit) = match unit_start {
-        Some(at) => (&text[..at], AxisUnit::from_text(&text[at..])?),
-        None => return None,
-    };
-    let (a, b) = numbers.trim().split_once([':', ' ', '–']).or_else(|| numbers.trim().split_once('-'))?;
-    let edge = |s: &str| {
-        let value = s.trim().parse::<f64>().ok()?;
-        unit.wavenumber(value, medium).ok().map(Wavenumber::inverse_cm)
-    };
-    let (a, b) = (edge(a)?, edge(b)?);
-    (a != b).then_some((a.min(b), a.max(b)))
 }

@@ -1,0 +1,174 @@
+//! From answers to records.
+
+use std::collections::BTreeMap;
+
+use itertools::Itertools;
+
+use super::report::{ExpectedWindow, LevelRecord, PredictReport, Share, TableSummary, UsedConstant};
+use crate::enumerate::prediction::{Predicted, family, family_text};
+use crate::level::Level;
+use crate::mode::{ModeTable, TableOrigin};
+use crate::note::Note;
+use crate::physics::position::{Model, Parameter};
+use crate::physics::strength;
+
+/// The summary of a table.
+pub fn summary(table: &ModeTable) -> TableSummary {
+    TableSummary {
+        name: table.name.clone(),
+        title: table.title.clone(),
+        formula: table.formula.clone(),
+        origin: match table.origin {
+            TableOrigin::Measured => "measured",
+            TableOrigin::Computed => "computed",
+            TableOrigin::Composed => "composed",
+            TableOrigin::Invented => "invented",
+        }
+        .to_owned(),
+        source: table.source.clone(),
+        point_group: table.point_group.clone(),
+        temperature_k: table.temperature,
+        modes: table.modes.len(),
+        caution: table.caution.clone(),
+    }
+}
+
+/// The constants behind a level's position.
+pub fn used_constants(table: &ModeTable, model: &Model, level: &Level) -> Vec<UsedConstant> {
+    let id = |index: usize| table.modes[index].id.as_str();
+    model
+        .gradient(level)
+        .into_iter()
+        .filter_map(|(parameter, _)| {
+            let (quantity, sourced) = match parameter {
+                Parameter::Nu(_) => return None,
+                Parameter::X(i, j) => (format!("x({},{})", id(j), id(i)), model.x(i, j)),
+                Parameter::G(i) => (format!("g({})", id(i)), model.g[i].as_ref()?),
+            };
+            Some(UsedConstant {
+                quantity,
+                value_cm1: sourced.value,
+                sigma_cm1: sourced.sigma,
+                origin: format!("{:?}", sourced.origin).to_lowercase(),
+            })
+        })
+        .collect()
+}
+
+/// The record of one predicted transition; its class is set by [`classify`].
+pub fn level_record(table: &ModeTable, model: &Model, p: &Predicted) -> LevelRecord {
+    let mut moieties: Vec<usize> =
+        p.level.excitations().iter().map(|e| table.modes[usize::from(e.mode)].moiety).collect();
+    moieties.sort_unstable();
+    moieties.dedup();
+    LevelRecord {
+        label: p.level.label(table),
+        family: family_text(&family(table, &p.level)),
+        quanta: quanta(table, &p.level),
+        order: p.level.order(),
+        position_cm1: p.position,
+        sigma_cm1: p.variance.sqrt(),
+        position_um: 1.0e4 / p.position,
+        moieties: moieties.into_iter().map(|m| table.moieties[m].name.clone()).collect(),
+        species: p.species.iter().map(|(name, n)| if *n == 1 { name.clone() } else { format!("{n}{name}") }).collect(),
+        ir: p.infrared.word().to_owned(),
+        ir_reason: p.reason.clone(),
+        raman: p.raman.word().to_owned(),
+        strength_log10: p.strength.log10,
+        strength_sigma: p.strength.sigma,
+        strength_class: String::new(),
+        fwhm_cm1: p.width,
+        from: p.from.as_ref().map_or_else(String::new, |from| from.label(table)),
+        shares: p.shares.iter().map(|(level, share)| Share { label: level.label(table), share: *share }).collect(),
+        constants: used_constants(table, model, &p.level),
+    }
+}
+
+/// Quanta by mode id.
+pub fn quanta(table: &ModeTable, level: &Level) -> BTreeMap<String, u8> {
+    level.excitations().iter().map(|e| (table.modes[usize::from(e.mode)].id.clone(), e.quanta)).collect()
+}
+
+/// Gives every level its strength class, relative to the strongest of the list.
+pub fn classify(levels: &mut [LevelRecord]) {
+    let strongest = levels.iter().map(|l| l.strength_log10).fold(f64::NEG_INFINITY, f64::max);
+    for level in levels {
+        level.strength_class = strength::class(level.strength_log10 - strongest).to_owned();
+    }
+}
+
+/// Merges levels of one family on the same kinds of moiety that cannot be told apart: neighbours closer than the sum
+/// of their uncertainties and a quarter of their widths run together. Levels more than two decades below the strongest
+/// of their window do not stretch it.
+pub fn windows(levels: &[LevelRecord]) -> Vec<ExpectedWindow> {
+    let formula = |name: &String| name.split(['-', '_', '#', ' ', '(']).next().unwrap_or(name).to_owned();
+    let mut groups: BTreeMap<(String, Vec<String>), Vec<&LevelRecord>> = BTreeMap::new();
+    for level in levels.iter().filter(|l| l.from.is_empty()) {
+        let moieties = level.moieties.iter().map(formula).sorted().dedup().collect();
+        groups.entry((level.family.clone(), moieties)).or_default().push(level);
+    }
+    let mut list = Vec::new();
+    for ((family, moieties), mut members) in groups {
+        members.sort_by(|a, b| a.position_cm1.total_cmp(&b.position_cm1));
+        let mut start = 0;
+        for at in 1..=members.len() {
+            let apart = at == members.len() || {
+                let (a, b) = (members[at - 1], members[at]);
+                let reach = a.sigma_cm1 + b.sigma_cm1 + 0.25 * (a.fwhm_cm1 + b.fwhm_cm1);
+                b.position_cm1 - a.position_cm1 > reach
+            };
+            if !apart {
+                continue;
+            }
+            let run = &members[start..at];
+            start = at;
+            let Some(best) = run.iter().max_by(|a, b| {
+                a.strength_log10.total_cmp(&b.strength_log10).then(b.position_cm1.total_cmp(&a.position_cm1))
+            }) else {
+                continue;
+            };
+            let seen = run.iter().filter(|l| l.strength_log10 > best.strength_log10 - 2.0);
+            let low = seen.clone().map(|l| l.position_cm1 - l.sigma_cm1).fold(f64::INFINITY, f64::min);
+            let high = seen.map(|l| l.position_cm1 + l.sigma_cm1).fold(0.0, f64::max);
+            list.push(ExpectedWindow {
+                family: family.clone(),
+                moieties: moieties.clone(),
+                low_cm1: low.max(1.0),
+                high_cm1: high,
+                centre_cm1: best.position_cm1,
+                strength_log10: best.strength_log10,
+                strength_class: String::new(),
+                levels: run.len(),
+            });
+        }
+    }
+    list.sort_by(|a, b| b.strength_log10.total_cmp(&a.strength_log10).then(a.centre_cm1.total_cmp(&b.centre_cm1)));
+    let strongest = list.first().map_or(0.0, |w| w.strength_log10);
+    for window in &mut list {
+        window.strength_class = strength::class(window.strength_log10 - strongest).to_owned();
+    }
+    list
+}
+
+/// The report of `predict`.
+pub fn predict_report(
+    table: &ModeTable,
+    model: &Model,
+    window: (f64, f64),
+    quanta: u8,
+    predicted: &[Predicted],
+    notes: &[Note],
+) -> PredictReport {
+    let mut levels: Vec<LevelRecord> = predicted.iter().map(|p| level_record(table, model, p)).collect();
+    classify(&mut levels);
+    PredictReport {
+        schema: "bandwright/predict/1".to_owned(),
+        table: summary(table),
+        window_cm1: window,
+        quanta,
+        windows: windows(&levels),
+        levels,
+        left_out: 0,
+        notes: notes.iter().map(|n| n.0.clone()).collect(),
+    }
+}
