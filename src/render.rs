@@ -14,3 +14,6 @@ pub mod predict;
 
 /// From answers to records.
 pub mod records;
+
+/// `assign` in text, CSV and JSON.
+pub mod assign;
