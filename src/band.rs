@@ -145,4 +145,8 @@ pub struct Spectrum {
     pub axis: Option<AxisUnit>,
     /// Medium the wavelengths were taken to be measured in.
     pub medium: Medium,
+    /// Whether the medium was stated, or needs no statement (a wavenumber axis).
+    pub medium_given: bool,
+    /// Instrument resolution stated in the file: full width at half maximum, cm⁻¹.
+    pub resolution: Option<f64>,
 }

@@ -12,6 +12,9 @@ pub mod input;
 /// `predict`: where a table absorbs.
 pub mod predict;
 
+/// `pick`: a band list from a spectrum.
+pub mod pick;
+
 /// `check`: faults and doubts of tables.
 pub mod check;
 
@@ -84,6 +87,8 @@ pub struct Arguments {
 pub enum Command {
     /// Where a table absorbs: levels, uncertainty, species, strength class.
     Predict(predict::Predict),
+    /// A band list from a spectrum.
+    Pick(pick::Pick),
     /// Faults and doubts of mode tables.
     Check(check::Check),
     /// What is bundled, with sources.
@@ -119,6 +124,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> Outcome {
     };
     let result = match arguments.command {
         Command::Predict(command) => command.run(),
+        Command::Pick(command) => command.run(),
         Command::Check(command) => command.run(),
         Command::Tables(command) => command.run(),
         Command::Completions(command) => command.run(),

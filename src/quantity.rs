@@ -180,6 +180,9 @@ pub struct NotAWindow {
 }
 
 impl Window {
+    /// Every wavenumber a vibrational spectrum can have.
+    pub const WHOLE: Self = Self { low: 0.0, high: 1.0e5 };
+
     /// Below this a number without a unit is more likely a wavelength in µm: the user is asked, nothing is assumed.
     const LOWEST_WITHOUT_UNIT: f64 = 100.0;
 

@@ -21,4 +21,13 @@ pub mod band_list;
 /// What related samples show.
 pub mod companions;
 
+/// Spectra: the door for every file form.
+pub mod spectrum;
+
+/// Spectra as columns of text.
+mod spectrum_text;
+
+/// Spectra as JCAMP-DX.
+mod jcamp_dx;
+
 pub use error::{Complaint, Complaints, Location};
