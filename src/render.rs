@@ -15,6 +15,9 @@ pub mod predict;
 /// From answers to records.
 pub mod records;
 
+/// `assign` in text, CSV and JSON.
+pub mod assign;
+
 /// Band lists as files.
 pub mod band_list;
 

@@ -15,7 +15,6 @@ pub struct Bundled {
 }
 
 /// `bundle!(name)` or `bundle!(name + constants)`.
-#[allow(unused_macros)]
 macro_rules! bundle {
     ($name:literal) => {
         Bundled { name: $name, modes: include_str!(concat!("../../mode_tables/", $name, ".csv")), constants: None }
@@ -30,7 +29,26 @@ macro_rules! bundle {
 }
 
 /// All bundled tables, by name.
-pub const BUNDLED: &[Bundled] = &[];
+pub const BUNDLED: &[Bundled] = &[
+    bundle!("anhydrite"),
+    bundle!("bassanite"),
+    bundle!("calcite"),
+    bundle!("calcium_nitrate_tetrahydrate"),
+    bundle!("carbon_dioxide" + constants),
+    bundle!("epsomite"),
+    bundle!("gypsum"),
+    bundle!("hydrogen_cyanide" + constants),
+    bundle!("kieserite"),
+    bundle!("magnesium_chloride_hexahydrate"),
+    bundle!("magnesium_perchlorate_hexahydrate"),
+    bundle!("natron"),
+    bundle!("niter"),
+    bundle!("sodium_carbonate"),
+    bundle!("sodium_perchlorate"),
+    bundle!("sodium_perchlorate_monohydrate"),
+    bundle!("sulfur_dioxide" + constants),
+    bundle!("water" + constants),
+];
 
 /// Names of the bundled tables, in order.
 pub fn names() -> impl Iterator<Item = &'static str> {
