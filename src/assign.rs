@@ -1,1 +1,4 @@
 //! Levels become ranked candidates of bands.
+
+/// Each band by itself.
+pub mod single;

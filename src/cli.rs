@@ -15,6 +15,9 @@ pub mod predict;
 /// `pick`: a band list from a spectrum.
 pub mod pick;
 
+/// `assign`: which level is which band.
+pub mod assign;
+
 /// `check`: faults and doubts of tables.
 pub mod check;
 
@@ -89,6 +92,8 @@ pub enum Command {
     Predict(predict::Predict),
     /// A band list from a spectrum.
     Pick(pick::Pick),
+    /// Which level is which band: ranked candidates with probabilities and chance matches.
+    Assign(assign::Assign),
     /// Faults and doubts of mode tables.
     Check(check::Check),
     /// What is bundled, with sources.
@@ -125,6 +130,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> Outcome {
     let result = match arguments.command {
         Command::Predict(command) => command.run(),
         Command::Pick(command) => command.run(),
+        Command::Assign(command) => command.run(),
         Command::Check(command) => command.run(),
         Command::Tables(command) => command.run(),
         Command::Completions(command) => command.run(),

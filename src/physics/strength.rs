@@ -10,7 +10,7 @@
 use super::position::{Model, Picture};
 use crate::level::Level;
 use crate::library::defaults::{Contact, Defaults, Role};
-use crate::mode::{ModeTable, MoietyIndex};
+use crate::mode::{ModeTable, MoietyIndex, Strength};
 
 /// Expected strength: log₁₀ relative to the OH stretch fundamental (or the strongest fundamental of the ion in a salt
 /// without water), with one standard uncertainty in decades.
@@ -89,7 +89,12 @@ impl Strengths {
         let n = table.modes.len();
         let roles: Vec<Role> = (0..n).map(|i| Role::of(table, i)).collect();
         let base = (0..n)
-            .map(|i| table.modes[i].ir.map_or_else(|| fundamental(roles[i]), |s| s.log10().clamp(-3.0, 0.0)))
+            .map(|i| match table.modes[i].ir {
+                None => fundamental(roles[i]),
+                Some(Strength::Relative(_)) => table.modes[i].ir.map_or(0.0, |s| s.log10().clamp(-3.0, 0.0)),
+                // A word has no fixed scale between tables: it counts half, what the motion usually shows counts half.
+                Some(Strength::Word(word)) => 0.5 * (fundamental(roles[i]) + Strength::Word(word).log10()),
+            })
             .collect();
         let width = (0..n)
             .map(|i| table.modes[i].fwhm.unwrap_or_else(|| Defaults::bundled().width(roles[i], model.nu[i]).0))

@@ -4,7 +4,12 @@ use std::collections::BTreeMap;
 
 use itertools::Itertools;
 
-use super::report::{ExpectedWindow, LevelRecord, PredictReport, Share, TableSummary, UsedConstant};
+use super::report::{
+    AssignReport, BandRecord, CandidateRecord, ChanceRecord, ExpectedWindow, FactorRecord, FamilyRecord, LevelRecord,
+    OtherOriginRecord, PredictReport, Share, TableSummary, UsedConstant,
+};
+use crate::assign::single::{Ranked, verdict};
+use crate::band::BandList;
 use crate::enumerate::prediction::{Predicted, family, family_text};
 use crate::level::Level;
 use crate::mode::{ModeTable, TableOrigin};
@@ -171,4 +176,109 @@ pub fn predict_report(
         left_out: 0,
         notes: notes.iter().map(|n| n.0.clone()).collect(),
     }
+}
+
+/// The report of `assign` from bands ranked one by one.
+#[allow(clippy::too_many_arguments)]
+pub fn assign_report(
+    table: &ModeTable,
+    model: &Model,
+    bands: &BandList,
+    most_quanta: u8,
+    predicted: &[Predicted],
+    ranked: &[Ranked],
+    top: usize,
+    notes: &[Note],
+) -> AssignReport {
+    let records = bands.bands.iter().zip(ranked).map(|(band, answer)| {
+        let mut families: BTreeMap<(Vec<String>, Vec<String>), f64> = BTreeMap::new();
+        for offer in &answer.offers {
+            *families.entry(family_key(table, &predicted[offer.level].level)).or_default() += offer.probability;
+        }
+        let mut families: Vec<FamilyRecord> = families
+            .into_iter()
+            .map(|((family, moieties), probability)| FamilyRecord { family, moieties, probability })
+            .collect();
+        families.sort_by(|a, b| {
+            b.probability
+                .total_cmp(&a.probability)
+                .then_with(|| (&a.family, &a.moieties).cmp(&(&b.family, &b.moieties)))
+        });
+        let mut levels: Vec<LevelRecord> =
+            answer.offers.iter().take(top).map(|o| level_record(table, model, &predicted[o.level])).collect();
+        classify(&mut levels);
+        let candidates = levels
+            .into_iter()
+            .zip(&answer.offers)
+            .map(|(level, offer)| CandidateRecord {
+                offset_cm1: band.position.inverse_cm() - level.position_cm1,
+                level,
+                probability: offer.probability,
+                factors: offer
+                    .factors
+                    .iter()
+                    .map(|f| FactorRecord { reason: f.reason.clone(), log10: f.log10 })
+                    .collect(),
+            })
+            .collect();
+        let leading = families.first().map_or(0.0, |f| f.probability);
+        let word = verdict(leading, answer.foreign, answer.chance.weighted);
+        let reason = match families.first() {
+            None => "no level of the table comes near; another substance, an artefact, or more quanta".to_owned(),
+            Some(f) => format!(
+                "{} on {} has {:.2}; {:.1} sums meet this position by chance, {:.1} of them strong enough to be seen",
+                f.family.join(" + "),
+                f.moieties.join(", "),
+                f.probability,
+                answer.chance.expected(),
+                answer.chance.weighted
+            ),
+        };
+        BandRecord {
+            band: band.id.clone(),
+            observed_cm1: band.position.inverse_cm(),
+            sigma_cm1: band.sigma,
+            observed_um: band.position.vacuum_micrometres(),
+            candidates,
+            families,
+            other_origin: OtherOriginRecord { probability: answer.foreign, foreign: answer.foreign, unlisted: 0.0 },
+            chance_matches: ChanceRecord {
+                expected: answer.chance.expected(),
+                tolerance_cm1: answer.chance.tolerance,
+                weighted: answer.chance.weighted,
+                by_order: answer.chance.by_order.iter().map(|(order, n)| (order.to_string(), *n)).collect(),
+            },
+            verdict: word.to_owned(),
+            verdict_reason: reason,
+        }
+    });
+    AssignReport {
+        schema: "bandwright/assign/1".to_owned(),
+        table: summary(table),
+        bands_from: bands.name.clone(),
+        sample: bands.sample.clone(),
+        quanta: most_quanta,
+        method: "each band by itself: position, expected strength against the matched detection limit, other origin"
+            .to_owned(),
+        bands: records.collect(),
+        inflation: 1.0,
+        notes: notes.iter().map(|n| n.0.clone()).collect(),
+        ..AssignReport::default()
+    }
+}
+
+/// The family of a level as records name it: motions with counts, formulas of moieties.
+pub fn family_key(table: &ModeTable, level: &Level) -> (Vec<String>, Vec<String>) {
+    let motions = family(table, level)
+        .iter()
+        .map(|(motion, n)| if *n == 1 { motion.name().to_owned() } else { format!("{n} {motion}") })
+        .collect();
+    let moieties = level
+        .excitations()
+        .iter()
+        .map(|e| table.moiety_of(usize::from(e.mode)).formula().to_owned())
+        .sorted()
+        .dedup()
+        .collect();
+    (motions, moieties)
 }

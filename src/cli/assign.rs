@@ -1,0 +1,92 @@
+//! `assign`: which level is which band.
+
+use std::path::{Path, PathBuf};
+
+use super::output::{Format, OutputOptions};
+use super::{Failure, Outcome, input, tell};
+use crate::assign::single::{Assumptions, range_of, rank};
+use crate::enumerate::prediction::{BUDGET, Request, predict};
+use crate::physics::anharmonicity::resolve;
+use crate::read::band_list;
+use crate::render::{assign as render, records};
+
+/// Ranks the levels of a table as candidates for observed bands.
+#[derive(Debug, clap::Args)]
+pub struct Assign {
+    /// Mode table: a file or a bundled name (`bandwright tables`).
+    pub table: String,
+    /// Band list.
+    #[arg(long, value_name = "FILE")]
+    pub bands: PathBuf,
+    /// Constants file to use instead of the one beside the table.
+    #[arg(long, value_name = "FILE")]
+    pub constants: Option<PathBuf>,
+    /// Most quanta of a level.
+    #[arg(long, default_value_t = 4, value_parser = clap::value_parser!(u8).range(1..=9))]
+    pub quanta: u8,
+    /// Candidates listed per band.
+    #[arg(long, default_value_t = 10, value_name = "N")]
+    pub top: usize,
+    #[command(flatten)]
+    output: OutputOptions,
+}
+
+/// Levels this far beyond the outermost bands are still looked at, cm⁻¹.
+const MARGIN: f64 = 400.0;
+
+impl Assign {
+    /// Runs the command.
+    ///
+    /// # Errors
+    /// See [`Failure`].
+    pub fn run(self) -> Result<Outcome, Failure> {
+        let loaded = input::load_table_with(&self.table, self.constants.as_deref())?;
+        let listed = band_list::read_file(&self.bands)?;
+        let mut notes = loaded.notes;
+        notes.extend(listed.notes);
+        let (table, bands) = (loaded.value, listed.value);
+        let model = resolve(&table);
+        notes.extend(model.notes);
+        let (low, high) = range_of(&bands);
+        let positions = bands.bands.iter().map(|b| b.position.inverse_cm());
+        let request = Request {
+            window: (
+                (positions.clone().fold(low, f64::min) - MARGIN).max(1.0),
+                positions.fold(high, f64::max) + MARGIN,
+            ),
+            quanta: self.quanta,
+            budget: BUDGET,
+            hot: None,
+        };
+        let predicted = predict(&table, &model.value, &request).map_err(|e| Failure::Usage(e.to_string()))?;
+        let assume = Assumptions { listed: self.top, ..Assumptions::default() };
+        let ranked = rank(&predicted.value, &bands, &assume);
+        let report = records::assign_report(
+            &table,
+            &model.value,
+            &bands,
+            self.quanta,
+            &predicted.value,
+            &ranked,
+            self.top,
+            &notes,
+        );
+        tell(&notes);
+        let text = match self.output.format {
+            Format::Table => render::table(&report),
+            Format::Csv => render::csv(&report),
+            Format::Json => render::json(&report),
+            Format::Html | Format::Svg => return Err(self.output.refuse("assign", "table, csv, json")),
+        };
+        let inputs: Vec<&Path> = [Some(Path::new(&self.table)), Some(self.bands.as_path()), self.constants.as_deref()]
+            .into_iter()
+            .flatten()
+            .collect();
+        self.output.deliver(text.as_bytes(), &inputs)?;
+        let unexplained = report.bands.iter().any(|b| {
+            b.candidates.first().is_none_or(|c| c.probability <= b.other_origin.probability)
+                && b.families.first().is_none_or(|f| f.probability <= b.other_origin.probability)
+        });
+        Ok(if unexplained { Outcome::Unexplained } else { Outcome::Done })
+    }
+}
