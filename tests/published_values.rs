@@ -135,3 +135,52 @@ fn variance_and_covariance_meet_the_worked_example() {
     assert!((model.covariance(&aa, &ab) - 450.0).abs() < 1.0e-9);
     assert!((model.covariance(&abc, &acc) - 1153.0).abs() < 1.0e-9);
 }
+
+/// Position of a level of a bundled table, `(mode id, quanta)`, before resonances.
+fn bundled_position(table: &str, quanta: &[(&str, u8)]) -> f64 {
+    let table = bandwright::library::bundled(table).unwrap().unwrap().value;
+    let model = bandwright::physics::anharmonicity::resolve(&table).value;
+    let pairs: Vec<(usize, u8)> = quanta.iter().map(|(id, n)| (table.mode_index(id).unwrap(), *n)).collect();
+    model.position(&Level::from_quanta(&pairs))
+}
+
+#[test]
+fn gas_water_combinations_with_the_bend_meet_the_observed_origins() {
+    // Origins: 2ν2 3151.630 and ν1+ν2 5234.977 (AFGL/HITRAN energies, read), ν2+ν3 5331.27 (IUPAC evaluation, memory).
+    // Tolerance 5 cm⁻¹: fourth-order terms; 2ν2 is the worst.
+    let levels: [(&[(&str, u8)], f64); 3] =
+        [(&[("nu2", 2)], 3151.630), (&[("nu1", 1), ("nu2", 1)], 5234.977), (&[("nu2", 1), ("nu3", 1)], 5331.27)];
+    for (level, observed) in levels {
+        let position = bundled_position("water", level);
+        assert!((position - observed).abs() < 5.0, "{level:?}: {position} against {observed}");
+    }
+    // Out of reach without the Darling-Dennison resonance: 2ν1 7201.54 and 2ν3 7445.05 (memory) repel each other; the
+    // bare formula misses them by tens of wavenumbers in opposite directions.
+    let low = bundled_position("water", &[("nu1", 2)]) - 7201.54;
+    let high = bundled_position("water", &[("nu3", 2)]) - 7445.05;
+    assert!(low > 20.0 && high < -20.0, "2ν1 {low:+.1}, 2ν3 {high:+.1}");
+}
+
+#[test]
+fn gas_levels_without_resonance_meet_the_observed_origins() {
+    // SO2 (memory; constants from two-quanta origins, so three quanta test them): ν1+2ν2 2180.33, 2ν2+ν3 2388.92.
+    // HCN (memory): 2ν3 6519.61 and ν1+ν3 5393.70, ν2 = 711.98 + B l² (1.478). 2ν1 4173.07 misses by 4 to 6: the source's
+    // x11 does not fit the band origins (said in the reference set).
+    for (table, level, observed, tolerance) in [
+        ("sulfur_dioxide", vec![("nu1", 1u8), ("nu2", 2)], 2180.33, 1.0),
+        ("sulfur_dioxide", vec![("nu2", 2), ("nu3", 1)], 2388.92, 1.0),
+        // Third-order terms of the stretch are given in the source (y333 0.27, y133 −1.1) and left out here.
+        ("hydrogen_cyanide", vec![("nu3", 2)], 6519.61, 5.0),
+        ("hydrogen_cyanide", vec![("nu1", 1), ("nu3", 1)], 5393.70, 5.0),
+        // CO2 without Fermi partners: ν3 2349.143 and 2ν3 4673.33 (AFGL/HITRAN energies).
+        ("carbon_dioxide", vec![("nu3", 1)], 2349.143, 0.05),
+    ] {
+        let position = bundled_position(table, &level);
+        assert!((position - observed).abs() < tolerance, "{table} {level:?}: {position} against {observed}");
+    }
+    let miss = bundled_position("hydrogen_cyanide", &[("nu1", 2)]) - 4173.071;
+    assert!((3.0..8.0).contains(&miss), "2ν1 of HCN: {miss:+.1}");
+    // Out of reach without the Fermi resonance: ν1 of CO2 (1388.185) by half the splitting of the pair.
+    let fermi = 1388.185 - bundled_position("carbon_dioxide", &[("nu1", 1)]);
+    assert!((45.0..65.0).contains(&fermi), "{fermi}");
+}
