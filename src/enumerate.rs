@@ -5,3 +5,6 @@ pub mod prediction;
 
 /// The pruned walk.
 pub mod walk;
+
+/// Exact counts.
+pub mod count;
