@@ -21,6 +21,9 @@ pub mod reflectance;
 /// Noise of a spectrum.
 pub mod noise;
 
+/// Smoothing where the noise asks for it.
+pub mod smoothing;
+
 /// Local maxima and how far they stand out.
 pub mod prominence;
 

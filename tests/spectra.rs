@@ -59,7 +59,8 @@ fn continuum_centre_and_depth_meet_the_computed_table_in_every_digit() {
     meets("minimum_sample_lambda", &[x[deepest]]);
     let depth: Vec<f64> = removed.iter().map(|r| 1.0 - r).collect();
     let around = deepest - 1..=deepest + 1;
-    let (position, value) = parabola(&x[around.clone()], &depth[around]).unwrap();
+    let vertex = parabola(&x[around.clone()], &depth[around]).unwrap();
+    let (position, value) = (vertex.position, vertex.height);
     meets("parabola_centre_lambda", &[position]);
     meets("parabola_depth", &[value]);
     meets("centroid_lambda (trapezoid, depth-weighted)", &[centroid(&x, &depth).unwrap()]);
@@ -271,7 +272,7 @@ fn picked_by_the_rule_of_the_table(spectrum: &Spectrum, segment: &str) -> Vec<Fo
         let depth: Vec<f64> = Continuum::upper_hull(&x, &y).removed(&x, &y).iter().map(|r| 1.0 - r).collect();
         for peak in peaks(&depth).into_iter().filter(|p| p.prominence >= 0.012) {
             let near = peak.at - 1..=peak.at + 1;
-            let position = parabola(&x[near.clone()], &depth[near]).map_or(x[peak.at], |v| v.0);
+            let position = parabola(&x[near.clone()], &depth[near]).map_or(x[peak.at], |v| v.position);
             let words = format!("(prominence {:.3})", peak.prominence);
             if ![3854.0, 3869.0, 3902.0].iter().any(|line| (1.0e4 / position - line).abs() < 5.0) {
                 list.push(Found { position, sigma: 0.0, band: true, words });
@@ -309,9 +310,550 @@ fn bands_measured_on_library_spectra_are_found_again() {
     }
     eprintln!("all spectra\n  rule of the table: {}\n  ours: {}", theirs.line(), ours.line());
     assert!(ours.deep > 90, "the table was not read");
+    // The aim: 95 of 100 deep bands found, at most one extra band in ten. What the table lists by its own rule is the check
+    // of hull, prominence and parabola: misses there differ from the table by more than it states, by up to twice its error.
+    assert!(ours.deep_joint as f64 >= 0.95 * ours.deep as f64, "{}", ours.line());
+    assert!(ours.deep_strict as f64 >= 0.85 * ours.deep as f64, "{}", ours.line());
+    assert!(ours.extra as f64 <= 0.10 * ours.bands as f64, "{}", ours.line());
+    assert!(theirs.deep_strict as f64 >= 0.90 * theirs.deep as f64, "{}", theirs.line());
 }
 
-#[allow(unused)]
-fn unused(_: &Picked, _: AxisUnit, _: Ordinate, _: Label) {
-    let _ = (read_bytes, band_list::read);
+#[test]
+fn bands_of_the_two_example_spectra_are_found_again() {
+    let measured = rows("tests/data/measured_bands_beckman.csv");
+    let mut sum = Score::default();
+    for (file, sample) in [("gypsum_beckman", "HS333.3B"), ("epsomite_beckman", "GDS149")] {
+        let spectrum = spectrum_of(&format!("examples/spectra/{file}.csv"));
+        assert!(spectrum.title.contains("O4."), "{}", spectrum.title);
+        let own = score(&picked_by_us(&spectrum, "BECK"), &measured, sample, "BECK");
+        eprintln!("{file}: {}\n{}", own.line(), own.report);
+        sum.add(&own);
+    }
+    // 16 bands, of which two (prominence 0.014 and 0.020 over wavelength) have no maximum of their own over wavenumber.
+    assert_eq!((sum.deep, sum.deep_joint, sum.extra), (16, 14, 0), "{}", sum.report);
+}
+
+#[test]
+fn columns_are_read_in_every_usual_layout() {
+    // One spectrum in many clothes: 2.5, 2.0, 1.6 and 1.25 um with reflectance 0.5, 0.25, 0.4, 0.6.
+    let cases: [(&str, &str); 18] = [
+        ("comma", "wavelength_um,reflectance\n1.25,0.6\n1.6,0.4\n2.0,0.25\n2.5,0.5\n"),
+        ("semicolon, decimal comma", "wavelength_um;reflectance\r\n1,25;0,6\r\n1,6;0,4\r\n2,0;0,25\r\n2,5;0,5\r\n"),
+        ("tab", "wavelength (nm)\treflectance\n1250\t0.6\n1600\t0.4\n2000\t0.25\n2500\t0.5\n"),
+        ("tab, decimal comma", "Wellenl\u{e4}nge (nm)\tR\n1250\t0,6\n1600\t0,4\n2000\t0,25\n2500\t0,5\n"),
+        ("blanks", "# wavenumber_cm-1 reflectance\n  8000   0.6\n  6250   0.4\n  5000   0.25\n 4000 0.5\n"),
+        ("blanks, decimal comma", "wavenumber reflectance\n8000,0 0,6\n6250,0 0,4\n5000,0 0,25\n4000,0 0,5\n"),
+        ("ascending wavenumbers", "cm-1,R\n4000,0.5\n5000,.25\n6250,.4\n8000,.6\n"),
+        ("percent", "wavenumber (cm-1),% reflectance\n4000,50\n5000,25\n6250,40\n8000,60\n"),
+        ("percent by values", "wavenumber (cm-1),reflectance\n4000,50\n5000,25\n6250,40\n8000,60\n"),
+        (
+            "deleted channels",
+            "nm,R\n1250,0.6\n1300,-1.23e34\n1400,nan\n1600,0.4\n1700,-9999\n2000,0.25\n2500,0.5\n2600,\n",
+        ),
+        ("no header, um", "1.25 0.6\n1.6 0.4\n2.0 0.25\n2.5 0.5\n"),
+        ("Fortran exponents", "um R\n0.125D+01 6.0D-01\n0.16D+01 4.0D-01\n2.0D0 2.5D-1\n2.5D0 5.0D-1\n"),
+        (
+            "metadata",
+            "# axis: nm\n# ordinate: reflectance\n# title: powder\n\n1250,0.6\n1600,0.4\n2000,0.25\n2500,0.5\n",
+        ),
+        ("trailing separators", "nm;R;\n1250;0.6;\n1600;0.4;\n2000;0.25;\n2500;0.5;\n"),
+        ("old line ends", "nm,R\r1250,0.6\r1600,0.4\r2000,0.25\r2500,0.5\r"),
+        ("quoted", "\"nm\",\"R\"\n\"1250\",\"0.6\"\n\"1600\",\"0.4\"\n\"2000\",\"0.25\"\n\"2500\",\"0.5\"\n"),
+        ("three columns", "nm,reflectance,deviation\n1250,0.6,1\n1600,0.4,1\n2000,0.25,1\n2500,0.5,1\n"),
+        ("equal positions", "nm,R\n1250,0.6\n1600,0.3\n1600,0.5\n2000,0.25\n2500,0.5\n"),
+    ];
+    for (case, text) in cases {
+        let spectrum = read(text, &SpectrumOptions::default()).unwrap_or_else(|e| panic!("{case}: {e}")).value;
+        let (x, y) = (&spectrum.wavenumbers, &spectrum.ordinates);
+        let expected = [(4000.0, 0.5), (5000.0, 0.25), (6250.0, 0.4), (8000.0, 0.6)];
+        assert_eq!(x.len(), 4, "{case}: {x:?}");
+        for ((x, y), (ex, ey)) in x.iter().zip(y).zip(expected) {
+            // Rounding of 1/λ only.
+            assert!((x - ex).abs() < 1e-9 && (y - ey).abs() < 1e-12, "{case}: {x} {y}");
+        }
+    }
+}
+
+#[test]
+fn what_a_file_leaves_open_is_noted_or_asked() {
+    let notes = |text: &str| {
+        let read = read(text, &SpectrumOptions::default()).unwrap();
+        read.notes.iter().map(|n| n.0.clone()).collect::<Vec<_>>().join("\n")
+    };
+    let rows = "1250,0.6\n1600,0.4\n2000,0.25\n2500,0.5\n";
+    assert!(notes(&format!("wavelength_nm,reflectance\n{rows}")).contains("air or in vacuum is not stated"));
+    assert!(!notes(&format!("# medium: air\nwavelength_nm,reflectance\n{rows}")).contains("not stated"));
+    assert!(!notes(&format!("cm-1,reflectance\n{rows}")).contains("not stated"));
+    assert!(notes(&format!("cm-1,signal\n{rows}")).contains("taken as reflectance"));
+    assert!(notes("1.25,0.6\n1.6,0.4\n2.0,0.25\n2.5,0.5\n").contains("taken as wavelengths in um"));
+    assert!(notes("cm-1,R\n4000,50\n5000,25\n6250,40\n8000,60\n").contains("taken as percent"));
+    assert!(notes("nm,R\n1250,0.6\n1300,-1.23e34\n1600,0.4\n2000,0.25\n").contains("1 of 4 channels"));
+    assert!(notes("nm,R\n1000,0.6\n1010,0.4\n1008,0.25\n1300,0.5\n1500,0.5\n").contains("steps back 1 times"));
+    // 1250 to 2500 may be nanometres or wavenumbers: asked.
+    let complaint = read(rows, &SpectrumOptions::default()).unwrap_err().to_string();
+    assert!(complaint.contains("a unit of the axis") && complaint.contains("--axis"), "{complaint}");
+    let said =
+        SpectrumOptions { axis: Some(AxisUnit::Nanometre), medium: Some(Medium::Air), ..SpectrumOptions::default() };
+    let spectrum = read(rows, &said).unwrap().value;
+    assert!(spectrum.medium_given && spectrum.medium == Medium::Air);
+    // 2 um in standard air: 5000 cm-1 divided by n = 1.000273.
+    assert!((spectrum.wavenumbers[1] - 4998.64).abs() < 0.02, "{}", spectrum.wavenumbers[1]);
+    let absorbance =
+        read("cm-1,absorbance\n4000,0.5\n5000,2.25\n6250,2.4\n", &SpectrumOptions::default()).unwrap().value;
+    assert_eq!((absorbance.ordinate, absorbance.ordinates[1]), (Ordinate::Absorbance, 2.25));
+}
+
+#[test]
+fn bad_columns_draw_complaints_with_their_place() {
+    let cases: [(&str, &str); 12] = [
+        ("nm,R\n1250,0.6\n16O0,0.4\n2000,0.25\n", "s.csv:3:1: expected a position, found `16O0`"),
+        ("nm,R\n1250,0.6\n1600,high\n2000,0.25\n", "s.csv:3:6: expected an ordinate, found `high`"),
+        ("nm,R\n1250,0.6\n1600\n2000,0.25\n", "s.csv:3:5: expected an ordinate, found nothing"),
+        ("nm,R\n0,0.6\n1250,0.4\n1600,0.25\n", "s.csv:2: expected a position in nm, found `0`"),
+        ("nm,R\n1250,0.6\n1600,0.4\n-5,0.25\n", "expected positions that keep on ascending"),
+        (
+            "nm,R\n1250,0.6\n2500,0.4\n1250,0.25\n2500,0.1\n",
+            "s.csv:4: expected positions that keep on ascending after 2500, found `1250`",
+        ),
+        ("", "expected lines with two numbers"),
+        ("only words here\nand there\n", "expected lines with two numbers"),
+        ("nm,R\n1250,0.6\n1600,0.4\n", "at least three points of a spectrum, found `2`"),
+        ("nm,R\n1250,nan\n1600,nan\n1700,nan\n1800,0.5\n", "at least three points of a spectrum, found `1`"),
+        ("nm,R\n1,5,0,3\n1,6,0,4\n1,7,0,5\n1,8,0,6\n", "the same position in most lines"),
+        ("nm;R\n1250;0.6\n1260;0,6\n1270;0.7\n1280;0.7\n", "s.csv:3:6: expected an ordinate, found `0,6`"),
+    ];
+    for (text, expected) in cases {
+        match read(text, &SpectrumOptions::default()) {
+            Err(complaints) => assert!(complaints.to_string().contains(expected), "{text:?}: {complaints}"),
+            Ok(read) => panic!("{text:?} was read: {:?}", read.value.ordinates),
+        }
+    }
+    let column = SpectrumOptions { column: Some("dark".to_owned()), ..SpectrumOptions::default() };
+    let complaint = read("nm,R,T\n1250,0.6,1\n1600,0.4,1\n1700,0.5,1\n", &column).unwrap_err().to_string();
+    assert!(complaint.contains("a column `dark`") && complaint.contains("nm, R, T"), "{complaint}");
+    let binary = read_bytes("s.spc", vec![1, 2, 0, 4], &SpectrumOptions::default()).unwrap_err().to_string();
+    assert!(binary.contains("binary data (byte 3 is zero)"), "{binary}");
+    let folder = read_spectrum(Path::new("tests"), &SpectrumOptions::default()).unwrap_err().to_string();
+    assert!(folder.contains("found `a folder`"), "{folder}");
+}
+
+#[test]
+fn files_beyond_all_measure_are_refused_with_a_reason() {
+    let long = format!("nm,R\n1250,0.6\n{}\n", "1".repeat(200_000));
+    let complaint = read(&long, &SpectrumOptions::default()).unwrap_err().to_string();
+    assert!(complaint.contains("s.csv:3: expected a line of at most 100000 characters"), "{complaint}");
+    let rows: String = "1 1\n".repeat(2_000_002);
+    let complaint = read(&format!("1 2\n{rows}"), &SpectrumOptions::default()).unwrap_err().to_string();
+    assert!(complaint.contains("at most 2000000 points"), "{complaint}");
+    let bytes = vec![b'1'; (128 << 20) + 1];
+    let complaint = read_bytes("s.csv", bytes, &SpectrumOptions::default()).unwrap_err().to_string();
+    assert!(complaint.contains("at most 128 MiB"), "{complaint}");
+    // A repetition that stands for more points than there can be.
+    let bomb = jcamp("##XYDATA=(X++(Y..Y))\n4000 1Z99999999999\n4000 1Z999999\n");
+    let complaint = read(&bomb, &SpectrumOptions::default()).unwrap_err().to_string();
+    assert!(complaint.contains("no more points than a spectrum may have"), "{complaint}");
+}
+
+/// A block of JCAMP-DX around data records.
+fn jcamp(data: &str) -> String {
+    format!(
+        "##TITLE=powder\n##JCAMP-DX=4.24 $$ a comment\n##DATA TYPE=INFRARED SPECTRUM\n##XUNITS=1/CM\n##YUNITS=TRANSMITTANCE\n\
+         ##FIRSTX=4000\n##LASTX=4018\n##NPOINTS=10\n##XFACTOR=1\n##YFACTOR=0.1\n{data}##END=\n"
+    )
+}
+
+#[test]
+fn the_worked_example_of_the_standard_is_decompressed() {
+    // DIFDUP lines and their 53 ordinates: McDonald and Wilks, Appl. Spectrosc. 42, 151 (1988), table VI, in the corrected
+    // form of Baumbach et al. (2001). Status: read in several independent quotations, not in the papers themselves.
+    let ordinates: Vec<f64> =
+        "0 0 0 0 2 4 4 4 7 5 4 4 5 5 7 10 11 11 6 5 7 6 9 9 7 10 10 9 10 11 12 15 16 16 14 17 38 38 35 38 42 \
+                               47 54 59 66 75 78 88 96 104 110 121 128"
+            .split_whitespace()
+            .map(|v| v.parse().unwrap())
+            .collect();
+    let head = "##TITLE=x\n##JCAMP-DX=4.24\n##DATA TYPE=INFRARED SPECTRUM\n##XUNITS=1/CM\n##YUNITS=ABSORBANCE\n##FIRSTX=599.860\n\
+                ##LASTX=700.158\n##NPOINTS=53\n##XFACTOR=1.0\n##YFACTOR=1.0\n##DELTAX=1.92881\n";
+    let difdup =
+        "##XYDATA=(X++(Y..Y))\n599.860@VKT%TLkj%J%KLJ%njKjL%kL%jJULJ%kLK1%lLMNPNPRLJ0QTOJ1P\n700.158A28\n##END=\n";
+    let read = read(&format!("{head}{difdup}"), &SpectrumOptions::default()).unwrap();
+    assert_eq!(read.value.ordinates, ordinates);
+    assert_eq!(read.notes, []);
+    assert!((read.value.wavenumbers[52] - 700.158).abs() < 1e-9 && read.value.medium_given);
+    // The next line must repeat the last ordinate, 128.
+    let damaged = difdup.replace("A28", "A29");
+    let complaint = super_read(&format!("{head}{damaged}")).unwrap_err().to_string();
+    assert!(complaint.contains("s.csv:14:8: expected the ordinate check 128, found `A29`"), "{complaint}");
+    // One difference changed: the check of the next line catches it.
+    let damaged = difdup.replace("TLkj", "TLkk");
+    assert!(super_read(&format!("{head}{damaged}")).unwrap_err().to_string().contains("the ordinate check 127"));
+}
+
+fn super_read(text: &str) -> Result<Noted<Spectrum>, Complaints> {
+    read(text, &SpectrumOptions::default())
+}
+
+#[test]
+fn every_form_of_the_standard_is_one_spectrum() {
+    // The ten numbers of table VII of the same paper (see the unit test of the reader).
+    for data in [
+        "##XYDATA=(X++(Y..Y))\n4000 1 2 3 3 2 1 0 -1 -2 -3\n",
+        "##XYDATA= (X++(Y..Y))  $$ fixed\n4000  1  2  3  3\n4008  2  1  0 -1 $$ comment\n4016 -2 -3\n",
+        "##XYDATA=(X++(Y..Y))\n4000+1+2+3+3+2+1+0-1-2-3\n",
+        "##XYDATA=(X++(Y..Y))\r\n4000A BCCBA@abc\r\n",
+        "##XYDATA=(X++(Y..Y))\n4000AJJ%jj\n4010Ajjjj\n",
+        "##XYDATA=(X++(Y..Y))\n4000AJT%jX\n4018c\n",
+        "##XYPOINTS=(XY..XY)\n4000,1;4002,2;4004,3;4006,3\n4008,2 4010,1 4012,0 4014,-1.0E0\n4016 -2\n4018 -.3E+1\n",
+    ] {
+        let read = super_read(&jcamp(data)).unwrap_or_else(|e| panic!("{data}: {e}"));
+        assert_eq!((read.value.ordinate, read.value.title.as_str()), (Ordinate::Transmittance, "powder"));
+        let expected = [1.0, 2.0, 3.0, 3.0, 2.0, 1.0, 0.0, -1.0, -2.0, -3.0];
+        assert_eq!(read.value.ordinates.len(), 10, "{data}");
+        for (k, (found, wanted)) in read.value.ordinates.iter().zip(expected).enumerate() {
+            assert!((found - 0.1 * wanted).abs() < 1e-12, "{data}: {found}");
+            assert!((read.value.wavenumbers[k] - 4000.0 - 2.0 * k as f64).abs() < 1e-9, "{data}");
+        }
+    }
+}
+
+#[test]
+fn bad_jcamp_draws_complaints_with_their_place() {
+    let cases: [(String, &str); 14] = [
+        (
+            jcamp("##XYDATA=(X++(Y..Y))\n4000 1 2 3 3 2 1 0 -1 -2\n"),
+            "expected 9, the number of ordinates in the block, found `10`",
+        ),
+        (
+            jcamp("##XYDATA=(X++(Y..Y))\n4000 1 2 3 3 2\n4012 1 0 -1 -2 -3\n"),
+            "s.csv:13:1: expected a line that begins near 4010 (point 6), found `4012`",
+        ),
+        (
+            jcamp("##XYDATA=(X++(Y..Y))\n4000 1 2 &3 3 2 1 0 -1 -2 -3\n"),
+            "s.csv:12:10: expected a number in AFFN, PAC, SQZ, DIF or DUP form, found `&`",
+        ),
+        (jcamp("##XYDATA=(X++(Y..Y))\n4000JJ\n"), "s.csv:12:5: expected an ordinate before a difference, found `J`"),
+        (jcamp("##XYDATA=(X++(Y..Y))\n4000T\n"), "expected a number before its repetition"),
+        (jcamp("##XYDATA=(X++(R..R))\n4000 1\n"), "expected `(X++(Y..Y))` or `(XY..XY)`"),
+        (jcamp("##XYPOINTS=(XY..XY)\n4000,1;4002\n"), "expected an ordinate for every position"),
+        (jcamp("##PEAK TABLE=(XY..XY)\n4000,1\n"), "peaks are no spectrum"),
+        (jcamp("##NTUPLES=x\n"), "n-tuples are not read"),
+        (jcamp(""), "expected a spectrum: a record XYDATA or XYPOINTS"),
+        (
+            jcamp("##XYDATA=(X++(Y..Y))\n4000 1 2 3 3 2 1 0 -1 -2 -3\n").replace("LASTX=4018", "LASTX=4o18"),
+            "s.csv:7:9: expected a number, found `4o18`",
+        ),
+        (
+            jcamp("##XYDATA=(X++(Y..Y))\n4000 1 2 3 3 2 1 0 -1 -2 -3\n").replace("##FIRSTX=4000\n", ""),
+            "expected a record ##FIRSTX=",
+        ),
+        (
+            jcamp("##XYDATA=(X++(Y..Y))\n4000 1 2 3 3 2 1 0 -1 -2 -3\n").replace("XUNITS=1/CM", "XUNITS=SECONDS"),
+            "a unit of the axis",
+        ),
+        ("##TITLE=x\n##NO EQUALS\n".to_owned(), "s.csv:2:1: expected a record `##LABEL= value`"),
+    ];
+    for (text, expected) in cases {
+        match super_read(&text) {
+            Err(complaints) => assert!(complaints.to_string().contains(expected), "{expected}\n{complaints}"),
+            Ok(read) => panic!("{text} was read: {:?}", read.value.ordinates),
+        }
+    }
+}
+
+#[test]
+fn a_compound_file_asks_for_a_block() {
+    let block = |title: &str, first: &str| {
+        jcamp(&format!("##XYDATA=(X++(Y..Y))\n4000 {first} 2 3 3 2 1 0 -1 -2 -3\n")).replace("powder", title)
+    };
+    let text = format!(
+        "##TITLE=both\n##JCAMP-DX=5.01\n##DATA TYPE=LINK\n##BLOCKS=3\n{}{}##END=\n",
+        block("wet powder", "7"),
+        block("dry powder", "8")
+    );
+    let choose = |wanted: Option<&str>| {
+        let options = SpectrumOptions { block: wanted.map(str::to_owned), ..SpectrumOptions::default() };
+        read(&text, &options).map(|r| (r.value.ordinates[0], r.value.name)).map_err(|e| e.to_string())
+    };
+    let asked = choose(None).unwrap_err();
+    assert!(asked.contains("a choice of one block") && asked.contains("1: wet powder; 2: dry powder"), "{asked}");
+    assert!((choose(Some("2")).unwrap().0 - 0.8).abs() < 1e-12);
+    assert!((choose(Some("WET")).unwrap().0 - 0.7).abs() < 1e-12);
+    assert_eq!(choose(Some("2")).unwrap().1, "s.csv (block 2)");
+    assert!(choose(Some("powder")).unwrap_err().contains("several blocks of that title"));
+    assert!(choose(Some("3")).unwrap_err().contains("no such block"));
+}
+
+/// Ordinates in DIFDUP form, `width` characters a line, with the checks of the standard.
+fn difdup(first_x: f64, step: f64, ordinates: &[i64], width: usize) -> String {
+    let pseudo = |value: i64, zero: char, plus: &str, minus: &str| {
+        let digits = value.abs().to_string();
+        let lead = digits.as_bytes()[0] - b'0';
+        let letter = match (lead, value < 0) {
+            (0, _) => zero,
+            (d, false) => plus.as_bytes()[usize::from(d) - 1] as char,
+            (d, true) => minus.as_bytes()[usize::from(d) - 1] as char,
+        };
+        format!("{letter}{}", &digits[1..])
+    };
+    let mut text = String::new();
+    let mut at = 0;
+    while at < ordinates.len() {
+        let mut line =
+            format!("{}{}", first_x + step * at as f64, pseudo(ordinates[at], '@', "ABCDEFGHI", "abcdefghi"));
+        while at + 1 < ordinates.len() && line.len() < width {
+            let difference = ordinates[at + 1] - ordinates[at];
+            let mut run = 1;
+            while at + run + 1 < ordinates.len() && ordinates[at + run + 1] - ordinates[at + run] == difference {
+                run += 1;
+            }
+            line += &pseudo(difference, '%', "JKLMNOPQR", "jklmnopqr");
+            if run > 1 {
+                line += &pseudo(run as i64, '?', "STUVWXYZs", "");
+            }
+            at += run;
+        }
+        text += &format!("{line}\n");
+        if at + 1 == ordinates.len() {
+            // The last line repeats the last ordinate as a check.
+            if line.contains(|c: char| "%JKLMNOPQRjklmnopqr".contains(c)) {
+                let check = pseudo(ordinates[at], '@', "ABCDEFGHI", "abcdefghi");
+                text += &format!("{}{check}\n", first_x + step * at as f64);
+            }
+            break;
+        }
+    }
+    text
+}
+
+proptest::proptest! {
+    #![proptest_config(proptest::prelude::ProptestConfig {
+        cases: 128,
+        failure_persistence: None,
+        ..Default::default()
+    })]
+
+    #[test]
+    fn what_is_compressed_is_decompressed(
+        ordinates in proptest::collection::vec(-2000_i64..2000, 4..300),
+        flat in 0_usize..60,
+        width in 12_usize..80,
+    ) {
+        let mut ordinates = ordinates;
+        let last = ordinates[ordinates.len() - 1];
+        ordinates.extend(std::iter::repeat_n(last, flat));
+        let n = ordinates.len();
+        let text = format!(
+            "##TITLE=x\n##JCAMP-DX=5.01\n##XUNITS=1/CM\n##YUNITS=ABSORBANCE\n##FIRSTX=1000\n##LASTX={}\n##NPOINTS={n}\n\
+             ##XYDATA=(X++(Y..Y))\n{}##END=\n",
+            1000 + 2 * (n - 1),
+            difdup(1000.0, 2.0, &ordinates, width)
+        );
+        let read = super_read(&text).map_err(|e| proptest::test_runner::TestCaseError::fail(format!("{e}\n{text}")))?;
+        let expected: Vec<f64> = ordinates.iter().map(|v| *v as f64).collect();
+        proptest::prop_assert_eq!(read.value.ordinates, expected);
+    }
+
+    #[test]
+    fn no_bytes_make_a_reader_panic(bytes in proptest::collection::vec(proptest::num::u8::ANY, 0..400)) {
+        let _ = read_bytes("s", bytes.clone(), &SpectrumOptions::default());
+        // The same bytes as data of a block, where the decompression sees them.
+        let mut block = jcamp("##XYDATA=(X++(Y..Y))\n4000 ").into_bytes();
+        block.extend(&bytes);
+        let _ = read_bytes("s", block, &SpectrumOptions::default());
+    }
+
+    #[test]
+    fn no_line_of_the_forms_makes_a_reader_panic(line in "[-+0-9.,;?@%A-Za-z# \n]{0,200}") {
+        let _ = super_read(&jcamp(&format!("##XYDATA=(X++(Y..Y))\n{line}\n")));
+        let _ = super_read(&jcamp(&format!("##XYPOINTS=(XY..XY)\n{line}\n")));
+        let _ = super_read(&line);
+    }
+
+    #[test]
+    fn no_spectrum_makes_the_picker_panic(
+        ordinates in proptest::collection::vec(-1.0e3_f64..1.0e3, 0..120),
+        steps in proptest::collection::vec(1.0e-6_f64..400.0, 120),
+        scale in proptest::prop_oneof![proptest::strategy::Just(1.0), proptest::strategy::Just(1.0e-3), proptest::strategy::Just(0.0)],
+        kind in 0_usize..3,
+    ) {
+        let mut x = 3500.0;
+        let wavenumbers = steps.iter().take(ordinates.len()).map(|s| { x += s; x }).collect();
+        let ordinates = ordinates.iter().map(|y| y * scale).collect();
+        let ordinate = [Ordinate::Reflectance, Ordinate::Transmittance, Ordinate::Absorbance][kind];
+        let spectrum = Spectrum { wavenumbers, ordinates, ordinate, axis: Some(AxisUnit::Micrometre), ..Spectrum::default() };
+        let picked = pick(&spectrum, &PickOptions { label: Some(Label::Hydrate), ..PickOptions::default() });
+        for b in &picked.value.bands {
+            proptest::prop_assert!(b.band.sigma.is_finite() && b.band.position.inverse_cm() > 0.0, "{:?}", b);
+            proptest::prop_assert!(b.band.fwhm.is_none_or(|w| w > 0.0 && w.is_finite()), "{:?}", b);
+        }
+    }
+}
+
+/// A made-up spectrum: Gaussian bands (position, depth, width) on a sloping continuum, sampled each `step` cm⁻¹ with noise.
+fn made(bands: &[(f64, f64, f64)], step: f64, noise: f64, seed: u64) -> Spectrum {
+    use rand::{Rng, SeedableRng};
+    let mut random = rand_chacha::ChaCha8Rng::seed_from_u64(seed);
+    let wavenumbers: Vec<f64> = (0..).map(|k| 4000.0 + step * f64::from(k)).take_while(|v| *v <= 8000.0).collect();
+    let ordinates = wavenumbers
+        .iter()
+        .map(|v| {
+            let absorbed: f64 = bands
+                .iter()
+                .map(|(at, depth, width)| depth * (-4.0 * std::f64::consts::LN_2 * ((v - at) / width).powi(2)).exp())
+                .sum();
+            // Twelve uniform numbers less six have unit variance.
+            let normal = (0..12).map(|_| random.random::<f64>()).sum::<f64>() - 6.0;
+            (0.6 + 2.0e-5 * (v - 4000.0)) * (1.0 - absorbed) + noise * normal
+        })
+        .collect();
+    Spectrum {
+        name: "made".to_owned(),
+        wavenumbers,
+        ordinates,
+        axis: Some(AxisUnit::InverseCentimetre),
+        medium_given: true,
+        ..Spectrum::default()
+    }
+}
+
+#[test]
+fn sigma_covers_the_error_of_bands_that_are_known() {
+    // Invented bands, 60 noisy drawings: the error in units of sigma must be of the order of one, and rarely above three.
+    let bands = [(4500.0, 0.10, 90.0), (5150.0, 0.40, 150.0), (6900.0, 0.25, 200.0)];
+    let (mut sum, mut wide, mut count, mut extra) = (0.0, 0, 0, 0);
+    for seed in 0..60 {
+        let picked = pick(&made(&bands, 4.0, 0.002, seed), &PickOptions::default()).value;
+        extra += picked.bands.len().saturating_sub(bands.len());
+        for b in &picked.bands {
+            if bands.iter().all(|(at, ..)| (b.band.position.inverse_cm() - at).abs() > 50.0) {
+                eprintln!("{seed}: extra {} at {}, depth {}", b.band.feature.name(), b.band.position, b.prominence);
+            }
+        }
+        for (at, depth, width) in bands {
+            let found = picked
+                .bands
+                .iter()
+                .min_by(|a, b| {
+                    (a.band.position.inverse_cm() - at).abs().total_cmp(&(b.band.position.inverse_cm() - at).abs())
+                })
+                .unwrap();
+            let z = (found.band.position.inverse_cm() - at) / found.band.sigma;
+            sum += z * z;
+            wide += usize::from(z.abs() > 3.0);
+            count += 1;
+            // The hull rides on the crests of the noise, so that bands look deeper by up to three noises and, the half level
+            // lying lower, wider: 7 % for the weakest band here, and as much again by its noisy flanks.
+            assert!((found.depth - depth).abs() < 0.02, "depth {} against {depth}", found.depth);
+            assert!((found.band.fwhm.unwrap() / width - 1.0).abs() < 0.2, "{:?} against {width}", found.band.fwhm);
+        }
+    }
+    let spread = (sum / f64::from(count)).sqrt();
+    eprintln!("error over sigma: {spread:.2}, above three: {wide} of {count}, extra bands: {extra}");
+    assert!((0.3..1.7).contains(&spread), "{spread}");
+    // At most one extra band in ten, the aim of the picker, on spectra whose noise alone would give dozens.
+    assert!(wide <= 4 && extra * 10 <= count as usize, "{wide} {extra}");
+}
+
+#[test]
+fn widths_are_freed_of_the_resolution() {
+    use bandwright::observe::width::Resolution;
+    // A band of 40 cm-1 seen by 40 cm-1 is 56.57 cm-1 wide (first table of widths).
+    let spectrum = made(&[(5150.0, 0.3, 56.568_542)], 2.0, 0.0, 0);
+    let seen = |text: Option<&str>| {
+        let options = PickOptions { resolution: text.and_then(Resolution::from_text), ..PickOptions::default() };
+        pick(&spectrum, &options).value.bands[0].clone()
+    };
+    assert!((seen(None).band.fwhm.unwrap() - 56.57).abs() < 0.2);
+    assert!((seen(Some("40cm-1")).band.fwhm.unwrap() - 40.0).abs() < 0.3);
+    let unresolved = seen(Some("80cm-1"));
+    assert!(unresolved.band.fwhm.is_none() && unresolved.band.note.contains("resolution"));
+}
+
+#[test]
+fn a_spectrum_that_contradicts_its_label_draws_a_note() {
+    let contradictions = |bands: &[(f64, f64, f64)], label: Label| {
+        let options = PickOptions { label: Some(label), ..PickOptions::default() };
+        let picked = pick(&made(bands, 5.0, 0.0, 0), &options);
+        picked.value.contradictions.iter().map(|n| n.0.clone()).collect::<Vec<_>>()
+    };
+    let (wet, dry) = ([(6900.0, 0.3, 200.0), (5150.0, 0.4, 150.0)], [(4400.0, 0.2, 80.0)]);
+    assert!(contradictions(&wet, Label::Hydrate).is_empty());
+    assert!(contradictions(&dry, Label::Anhydrous).is_empty());
+    let missing = contradictions(&dry, Label::Hydrate);
+    assert!(missing.len() == 2 && missing[0].contains("no band in the 1.4 um region"), "{missing:?}");
+    let moist = contradictions(&wet, Label::Anhydrous);
+    assert!(moist.len() == 1 && moist[0].contains("moisture"), "{moist:?}");
+    // The library's anhydrite holds a little water, as the makers of the table found too; its gypsum is wet as it should be.
+    let gypsum = spectrum_of("examples/spectra/gypsum_beckman.csv");
+    let options = PickOptions { label: Label::from_text("CaSO4.2H2O"), ..PickOptions::default() };
+    assert!(pick(&gypsum, &options).value.contradictions.is_empty());
+}
+
+#[test]
+fn absorbance_and_reflectance_give_the_same_bands() {
+    let reflectance = made(&[(5150.0, 0.4, 150.0), (6900.0, 0.25, 200.0)], 4.0, 0.0, 0);
+    let mut absorbance = reflectance.clone();
+    absorbance.ordinate = Ordinate::Absorbance;
+    absorbance.ordinates = reflectance.ordinates.iter().map(|r| -r.log10()).collect();
+    let (a, b) = (pick(&reflectance, &PickOptions::default()).value, pick(&absorbance, &PickOptions::default()).value);
+    assert_eq!((a.bands.len(), b.bands.len()), (2, 2));
+    for (a, b) in a.bands.iter().zip(&b.bands) {
+        // A hull in the logarithm is not the logarithm of a hull; on this gentle slope the difference is small.
+        assert!((a.band.position.inverse_cm() - b.band.position.inverse_cm()).abs() < 1.0);
+        assert!((a.depth - b.depth).abs() < 0.01);
+    }
+}
+
+/// Runs the program: exit code, standard output, standard error.
+fn run(arguments: &[&str]) -> (i32, String, String) {
+    let output = std::process::Command::new(env!("CARGO_BIN_EXE_bandwright")).args(arguments).output().unwrap();
+    let text = |bytes: Vec<u8>| String::from_utf8(bytes).unwrap();
+    (output.status.code().unwrap(), text(output.stdout), text(output.stderr))
+}
+
+#[test]
+fn pick_writes_a_band_list_that_is_read_again() {
+    let (code, csv, notes) = run(&["pick", "examples/spectra/gypsum_beckman.csv", "--format", "csv"]);
+    assert_eq!(code, 0, "{notes}");
+    assert!(notes.contains("air or in vacuum is not stated") && notes.contains("searched from 3922"), "{notes}");
+    let list = band_list::read("gypsum.csv", &csv).unwrap();
+    assert_eq!(list.notes, [], "a list we wrote draws no notes");
+    let picked: Picked = pick(&spectrum_of("examples/spectra/gypsum_beckman.csv"), &PickOptions::default()).value;
+    assert_eq!(list.value.bands.len(), picked.list.bands.len());
+    assert!(list.value.bands.len() >= 9);
+    for (read, ours) in list.value.bands.iter().zip(&picked.list.bands) {
+        assert!((read.position.inverse_cm() - ours.position.inverse_cm()).abs() < 0.006);
+        assert_eq!((read.feature, read.id.as_str()), (ours.feature, ours.id.as_str()));
+    }
+    assert!(list.value.medium_given && list.value.sample.starts_with("Gypsum"));
+    let (low, high) = list.value.range.unwrap();
+    assert!(low > 3900.0 && high < 11_800.0 && list.value.detection_limit.is_some());
+}
+
+#[test]
+fn pick_speaks_json_and_table_and_exits_as_promised() {
+    let file = "examples/spectra/gypsum_beckman.csv";
+    let (code, json, _) = run(&["pick", file, "--window", "1.3:2.1um", "--medium", "air", "--format", "json"]);
+    let value: serde_json::Value = serde_json::from_str(&json).unwrap();
+    assert_eq!((code, value["schema"].as_str()), (0, Some("bandwright/pick/1")));
+    let bands = value["bands"].as_array().unwrap();
+    let near = bands.iter().find(|b| (b["position_um"].as_f64().unwrap() - 1.944).abs() < 0.004).unwrap();
+    assert!(near["sigma"].as_f64().unwrap() > 0.0 && near["unit"] == "cm-1" && near["feature"] == "band");
+    let (code, table, _) = run(&["pick", file]);
+    assert!(code == 0 && table.contains("Gypsum") && table.contains("1.94"), "{table}");
+    assert_eq!(run(&["pick", file, "--label-check", "hydrate"]).0, 0);
+    let (code, _, notes) = run(&["pick", file, "--label-check", "CaSO4"]);
+    assert!(code == 1 && notes.contains("the label says anhydrous"), "{notes}");
+    for (arguments, word) in [
+        (vec!["pick", file, "--window", "1:2"], "no unit"),
+        (vec!["pick", file, "--window", "100:200"], "too few"),
+        (vec!["pick", file, "--resolution", "10"], "no resolution"),
+        (vec!["pick", file, "--least-depth", "0"], "no fraction"),
+        (vec!["pick", file, "--label-check", "wet?"], "no label"),
+        (vec!["pick", file, "--format", "svg"], "no svg form"),
+        (vec!["pick", "no_such_file.csv"], "a file that can be read"),
+    ] {
+        let (code, out, errors) = run(&arguments);
+        assert!(code == 2 && out.is_empty() && errors.contains(word), "{arguments:?}: {code} {errors}");
+    }
 }

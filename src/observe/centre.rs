@@ -1,13 +1,26 @@
 //! The centre of a band: parabola, centroid, midpoint.
 
-/// The vertex (position, value) of the parabola through three points, or fitted to more by least squares; `None` when the
+/// The vertex of a parabola that opens downwards.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Vertex {
+    /// Where it is.
+    pub position: f64,
+    /// The value there.
+    pub height: f64,
+    /// Minus half of the second derivative: height − value = curvature · (x − position)².
+    pub curvature: f64,
+    /// Standard deviation of the position for a standard deviation of one of every value.
+    pub position_error: f64,
+}
+
+/// The vertex of the parabola through three points, or fitted to more by least squares; `None` when the
 /// parabola does not open downwards, or its vertex lies outside the points.
 ///
 /// # Units and shapes
 /// `x` ascends and is as long as `depth`; a maximum of depth is looked for. With three points the parabola meets them.
 /// # Method
 /// Normal equations of a quadratic, in the coordinate u = (x − mean) / half-span, which keeps them well conditioned.
-pub fn parabola(x: &[f64], depth: &[f64]) -> Option<(f64, f64)> {
+pub fn parabola(x: &[f64], depth: &[f64]) -> Option<Vertex> {
     let n = x.len();
     if n < 3 || depth.len() != n {
         return None;
@@ -30,7 +43,14 @@ pub fn parabola(x: &[f64], depth: &[f64]) -> Option<(f64, f64)> {
     }
     let u = -b / (2.0 * c);
     let position = middle + u * span;
-    (x[0] <= position && position <= x[n - 1]).then(|| (position, a + b * u + c * u * u))
+    // The vertex moves with the slope b, whose variance is that of a value over the sum of u².
+    let spread = x.iter().map(|x| ((x - middle) / span).powi(2)).sum::<f64>().sqrt();
+    (x[0] <= position && position <= x[n - 1]).then(|| Vertex {
+        position,
+        height: a + b * u + c * u * u,
+        curvature: -c / (span * span),
+        position_error: span / (2.0 * -c * spread),
+    })
 }
 
 /// The centroid of `weight` over `x` by the trapezoid rule, ∫ x w dx / ∫ w dx; `None` when the weights vanish.
@@ -75,9 +95,10 @@ mod tests {
         let x = [1000.0, 1003.0, 1004.0, 1010.0];
         let y: Vec<f64> = x.iter().map(|x: &f64| 0.5 - 0.01 * (x - 1005.25).powi(2)).collect();
         for n in [3, 4] {
-            let (position, value) = parabola(&x[4 - n..], &y[4 - n..]).unwrap();
+            let vertex = parabola(&x[4 - n..], &y[4 - n..]).unwrap();
             // Exact but for rounding.
-            assert!((position - 1005.25).abs() < 1e-9 && (value - 0.5).abs() < 1e-9);
+            assert!((vertex.position - 1005.25).abs() < 1e-9 && (vertex.height - 0.5).abs() < 1e-9);
+            assert!((vertex.curvature - 0.01).abs() < 1e-9);
         }
         assert!(parabola(&[1.0, 2.0, 3.0], &[0.0, -1.0, 0.0]).is_none());
         assert!(parabola(&[1.0, 2.0, 3.0], &[0.0, 1.0, 4.0]).is_none());

@@ -10,6 +10,7 @@ use super::noise;
 use super::prominence::{Peak, peaks};
 use super::reflectance::apparent_absorbance;
 use super::shoulder;
+use super::smoothing::{smoothed, thinned};
 use super::width::{Resolution, intrinsic_width, noise_limit};
 use crate::band::{Band, BandList, Feature, Ordinate, Spectrum};
 use crate::mode::Strength;
@@ -122,6 +123,7 @@ pub fn pick(spectrum: &Spectrum, options: &PickOptions) -> Noted<Picked> {
         .collect();
     let x: Vec<f64> = inside.iter().map(|&i| spectrum.wavenumbers[i]).collect();
     let y: Vec<f64> = inside.iter().map(|&i| spectrum.ordinates[i]).collect();
+    let (x, y) = thinned(x, y);
     let mut picked = Picked {
         list: BandList {
             name: name.clone(),
@@ -148,24 +150,45 @@ pub fn pick(spectrum: &Spectrum, options: &PickOptions) -> Noted<Picked> {
     }
     picked.list.range = Some((x[0], x[x.len() - 1]));
     let absorbing = spectrum.ordinate == Ordinate::Absorbance;
-    let (continuum, depths) = depths_below(&x, &y, absorbing);
-    let hull = continuum.over(&x);
     // Noise of an absorbance A is a relative noise of ln 10 · δA.
+    let relative = |noise: f64, hull: f64| {
+        if absorbing { noise * std::f64::consts::LN_10 } else { noise / hull.abs().max(1.0e-6) }
+    };
     let typical_step = median(&x.windows(2).map(|pair| pair[1] - pair[0]).collect::<Vec<_>>());
-    let sample_noise: Vec<f64> = noise::along(&y, typical_step, 256)
-        .into_iter()
-        .zip(&hull)
-        .map(|(n, h)| if absorbing { n * std::f64::consts::LN_10 } else { n / h.abs().max(1.0e-6) })
-        .collect();
-    picked.noise = median(&sample_noise);
+    let raw_noise = noise::along(&y, typical_step, 256);
+    let raw_hull = depths_below(&x, &y, absorbing).0.over(&x);
+    let raw_relative: Vec<f64> = raw_noise.iter().zip(&raw_hull).map(|(n, h)| relative(*n, *h)).collect();
+    picked.noise = median(&raw_relative);
     let least = options.least_depth.max(1.0e-6);
+    // The largest of many samples of noise is larger than that of few: as √ln n, the reference being a hundred.
+    let significance = options.significance * ((x.len() as f64).ln() / 100.0_f64.ln()).sqrt().max(1.0);
+    let smooth = smoothed(&x, &y, typical_step, least / (significance * picked.noise.max(1.0e-12)));
+    if let Some(span) = smooth.span {
+        notes.push(Note::new(format!(
+            "{name}: noise of {:.2} % of the continuum; the spectrum was smoothed by parabolas over {span:.0} cm-1",
+            100.0 * picked.noise
+        )));
+    }
+    let y = smooth.ordinates;
+    let (continuum, depths) = depths_below(&x, &y, absorbing);
+    let sample_noise: Vec<f64> = raw_relative.iter().map(|n| n * smooth.noise_factor).collect();
+    picked.wavenumbers.clone_from(&x);
     let kept: Vec<Peak> = peaks(&depths)
         .into_iter()
-        .filter(|p| p.prominence >= least.max(options.significance * sample_noise[p.at]))
+        .filter(|p| p.prominence >= least.max(significance * sample_noise[p.at]))
         // The continuum touches the ends of the window, so that the very last points can look like a band.
         .filter(|p| p.at >= END_POINTS && p.at + END_POINTS < x.len())
         .collect();
-    let data = Data { spectrum, options, x: &x, y: &y, depths: &depths, noise: &sample_noise, continuum: &continuum };
+    let data = Data {
+        spectrum,
+        options,
+        x: &x,
+        y: &y,
+        depths: &depths,
+        noise: &sample_noise,
+        raw_noise: &raw_relative,
+        continuum: &continuum,
+    };
     for (k, peak) in kept.iter().enumerate() {
         let from = k.checked_sub(1).map_or(0, |before| lowest(&depths, kept[before].at, peak.at));
         let to = kept.get(k + 1).map_or(x.len() - 1, |next| lowest(&depths, peak.at, next.at));
@@ -173,8 +196,9 @@ pub fn pick(spectrum: &Spectrum, options: &PickOptions) -> Noted<Picked> {
     }
     if options.shoulders {
         let tops: Vec<usize> = kept.iter().map(|p| p.at).collect();
-        let least = (2.0 * least).max(2.0 * options.significance * picked.noise);
-        for found in shoulder::shoulders(&x, &depths, &tops, least, picked.noise) {
+        let noise = picked.noise * smooth.noise_factor;
+        let least = (2.0 * least).max(2.0 * significance * noise);
+        for found in shoulder::shoulders(&x, &depths, &tops, least, noise) {
             // The rounded corners of a saturated band bend like shoulders.
             let beside = |b: &PickedBand| {
                 let reach = 1.5 * b.band.fwhm.unwrap_or(0.0);
@@ -191,7 +215,7 @@ pub fn pick(spectrum: &Spectrum, options: &PickOptions) -> Noted<Picked> {
         found.band.id = format!("b{}", k + 1);
     }
     picked.list.bands = picked.bands.iter().map(|b| b.band.clone()).collect();
-    let limit = least.max(options.significance * picked.noise).min(0.99);
+    let limit = least.max(significance * picked.noise * smooth.noise_factor).min(0.99);
     picked.list.detection_limit = Some(apparent_absorbance(1.0 - limit));
     remarks(spectrum, &picked, &x, &mut notes);
     if let Some(label) = options.label {
@@ -278,6 +302,7 @@ struct Data<'a> {
     y: &'a [f64],
     depths: &'a [f64],
     noise: &'a [f64],
+    raw_noise: &'a [f64],
     continuum: &'a Continuum,
 }
 
@@ -310,7 +335,8 @@ impl Data<'_> {
     /// The band at a maximum of depth whose own ground reaches from point `from` to point `to`.
     fn band(&self, peak: Peak, from: usize, to: usize) -> Option<PickedBand> {
         let (x, depths, top) = (self.x, self.depths, peak.at);
-        let core_level = depths[top] - (CORE * peak.prominence).max(2.0 * self.noise[top]);
+        // Noise asks for a parabola that is wide enough to average it, up to a third of what stands out.
+        let core_level = depths[top] - (CORE * peak.prominence).max((3.0 * self.noise[top]).min(0.3 * peak.prominence));
         let walk = |end: usize, step: isize| {
             let mut at = top;
             while at != end && at.abs_diff(top) < CORE_POINTS {
@@ -326,8 +352,7 @@ impl Data<'_> {
         let three = (top.saturating_sub(1), (top + 1).min(x.len() - 1));
         let vertex = parabola(&x[core_from..=core_to.min(x.len() - 1)], &depths[core_from..=core_to.min(x.len() - 1)])
             .or_else(|| parabola(&x[three.0..=three.1], &depths[three.0..=three.1]));
-        let (position, depth) =
-            vertex.map_or((x[top], depths[top]), |(p, d)| (p, d.max(depths[top] - CORE * peak.prominence)));
+        let (position, depth) = vertex.map_or((x[top], depths[top]), |v| (v.position, v.height.max(core_level)));
         let depth = depth.clamp(0.0, 0.9999);
 
         // What is deeper than half: of the whole depth where the flanks reach it, else of what stands out.
@@ -370,7 +395,10 @@ impl Data<'_> {
             }
         }
         let estimates: Vec<f64> = [Some(position), centre, midpoint].into_iter().flatten().collect();
-        let limit = noise_limit(seen.unwrap_or(out_width), step, self.noise[top], peak.prominence);
+        // The noise of the very parabola, and never less than the limit that no estimate beats. Smoothed neighbours share
+        // their noise: what counts is the noise of the samples as measured.
+        let limit = noise_limit(seen.unwrap_or(out_width), step, self.raw_noise[top], peak.prominence)
+            .max(vertex.map_or(step, |v| v.position_error * self.raw_noise[top]));
         // The maximum of a band on the flank of a deeper one is pulled towards it.
         let pull = 0.25 * out_width * (1.0 - peak.prominence / depths[top]).max(0.0);
         let saturated = self.is_saturated(top, depth);
@@ -402,7 +430,7 @@ impl Data<'_> {
             band,
             depth,
             prominence: peak.prominence,
-            parabola: vertex.map(|v| v.0),
+            parabola: vertex.map(|v| v.position),
             centroid: centre,
             midpoint,
             saturated,

@@ -12,7 +12,7 @@ use itertools::Itertools;
 
 use super::error::{Complaint, Complaints, shown};
 use super::spectrum::{
-    LIMITS, MOST_COMPLAINTS, MOST_POINTS, RawPoint, RawSpectrum, SpectrumOptions, assemble, numbered_lines,
+    LIMITS, MOST_COMPLAINTS, MOST_POINTS, RawPoint, RawSpectrum, SpectrumOptions, about_line, assemble, numbered_lines,
 };
 use crate::band::Spectrum;
 use crate::note::{Note, Noted};
@@ -160,7 +160,7 @@ fn blocks_of<'a>(name: &str, text: &'a str) -> Result<Vec<Block<'a>>, Complaints
     for (number, whole) in numbered_lines(text) {
         if whole.len() > LIMITS.line {
             let expected = format!("a line of at most {} characters", LIMITS.line);
-            return Err(Complaint::at(name, number, 0, 0, "", expected, format!("{} bytes", whole.len())).into());
+            return Err(about_line(name, number, expected, format!("{} bytes", whole.len())).into());
         }
         let text = whole.split("$$").next().unwrap_or("");
         if let Some(rest) = text.trim_start().strip_prefix("##") {
@@ -269,8 +269,11 @@ enum Token {
 /// A token and the bytes it stands on.
 type Placed = (Token, usize, usize);
 
+/// What a pseudo-digit begins: its digit, whether it is negative, and the kind of token.
+type PseudoDigit = (u8, bool, fn(f64) -> Token);
+
 /// The leading pseudo-digit of SQZ, DIF and DUP forms: its digit, its sign and its kind.
-fn pseudo_digit(byte: u8) -> Option<(u8, bool, fn(f64) -> Token)> {
+fn pseudo_digit(byte: u8) -> Option<PseudoDigit> {
     Some(match byte {
         b'@' => (0, false, Token::Value),
         b'A'..=b'I' => (byte - b'A' + 1, false, Token::Value),

@@ -110,6 +110,13 @@ pub(super) fn numbered_lines(text: &str) -> impl Iterator<Item = (usize, &str)> 
     text.split(ending).enumerate().map(|(at, line)| (at + 1, line.strip_suffix('\r').unwrap_or(line)))
 }
 
+/// A complaint about a whole line that is not shown.
+pub(super) fn about_line(name: &str, line: usize, expected: impl Into<String>, found: impl Into<String>) -> Complaint {
+    let mut complaint = Complaint::about_file(name, expected, found);
+    complaint.at.line = line;
+    complaint
+}
+
 /// One point as it stands in the file, with its line; a deleted channel has no ordinate.
 #[derive(Clone, Copy, Debug)]
 pub(super) struct RawPoint {
@@ -240,7 +247,7 @@ pub(super) fn assemble(
     for point in &points {
         let wavenumber = axis.wavenumber(point.x, medium).map_err(|_| {
             let found = shown(&point.x.to_string());
-            Complaint::at(&name, point.line, 0, 0, "", format!("a position in {}", axis.name()), found)
+            about_line(&name, point.line, format!("a position in {}", axis.name()), found)
                 .hint("a wavelength is above zero; is the axis the first column?")
         })?;
         wavenumbers.push(wavenumber.inverse_cm());
@@ -280,9 +287,9 @@ pub(super) fn assemble(
 /// Brings the points into strict order along their axis. Detectors that overlap a little are sorted with a note, equal
 /// positions are averaged with a note; an axis that turns round is two spectra and refused.
 fn order(name: &str, points: &mut Vec<RawPoint>, notes: &mut Vec<Note>) -> Result<(), Complaints> {
-    let [first, .., last] = points.as_slice() else { return Ok(()) };
-    let (low, high) = points.iter().map(|p| p.x).minmax().into_option().unwrap_or((first.x, last.x));
-    let rising = last.x > first.x;
+    let Some((low, high)) = points.iter().map(|p| p.x).minmax().into_option() else { return Ok(()) };
+    let up = points.windows(2).filter(|pair| pair[1].x > pair[0].x).count();
+    let rising = up >= points.windows(2).filter(|pair| pair[1].x < pair[0].x).count();
     let back = |pair: &[RawPoint]| if rising { pair[0].x - pair[1].x } else { pair[1].x - pair[0].x };
     let (mut steps_back, mut equal) = (0_usize, 0_usize);
     for pair in points.windows(2) {
@@ -291,8 +298,8 @@ fn order(name: &str, points: &mut Vec<RawPoint>, notes: &mut Vec<Note>) -> Resul
         equal += usize::from(step == 0.0);
         if step > OVERLAP * (high - low) {
             let direction = if rising { "ascend" } else { "descend" };
-            let expected = format!("positions that keep on {direction}ing, below or above {}", pair[0].x);
-            let complaint = Complaint::at(name, pair[1].line, 0, 0, "", expected, pair[1].x.to_string());
+            let expected = format!("positions that keep on {direction}ing after {}", pair[0].x);
+            let complaint = about_line(name, pair[1].line, expected, pair[1].x.to_string());
             return Err(complaint.hint("one spectrum a file: are there two, one after the other?").into());
         }
     }

@@ -5,8 +5,8 @@
 
 use super::error::{Complaint, Complaints};
 use super::spectrum::{
-    LIMITS, MOST_COMPLAINTS, MOST_POINTS, RawPoint, RawSpectrum, SpectrumOptions, assemble, axis_of, numbered_lines,
-    ordinate_of,
+    LIMITS, MOST_COMPLAINTS, MOST_POINTS, RawPoint, RawSpectrum, SpectrumOptions, about_line, assemble, axis_of,
+    numbered_lines, ordinate_of,
 };
 use crate::band::Spectrum;
 use crate::note::{Note, Noted};
@@ -84,8 +84,9 @@ impl Layout {
         }
         let plain = text.replace('\u{2212}', "-");
         let plain = match (self.decimal_comma, plain.contains(',')) {
-            (true, true) if !plain.contains('.') => plain.replacen(',', ".", 1),
-            (true, true) | (false, true) => return None,
+            (true, _) if plain.contains('.') => return None,
+            (true, true) => plain.replacen(',', ".", 1),
+            (false, true) => return None,
             _ => plain,
         };
         // Fortran writes the exponent of a double with D.
@@ -122,7 +123,7 @@ pub(super) fn read(name: &str, text: &str, options: &SpectrumOptions) -> Result<
         if line.len() > LIMITS.line {
             let expected = format!("a line of at most {} characters", LIMITS.line);
             let found = format!("{} bytes", line.len());
-            return Err(Complaint::at(name, number, 0, 0, "", expected, found)
+            return Err(about_line(name, number, expected, found)
                 .hint("a spectrum has one point a line; is this the right file?")
                 .into());
         }
@@ -130,7 +131,9 @@ pub(super) fn read(name: &str, text: &str, options: &SpectrumOptions) -> Result<
     let layout = layout_of(text);
     let readable = |line: &str| {
         let pieces = layout.cut(line);
-        pieces.len() >= 2 && pieces[..2].iter().all(|p| layout.number(p.text).is_some())
+        // A spectrum may begin with deleted channels.
+        let marked = |p: &Piece<'_>| !p.text.is_empty() && layout.ordinate(p.text).is_some();
+        pieces.len() >= 2 && layout.number(pieces[0].text).is_some() && marked(&pieces[1])
     };
     let Some(first) = numbered_lines(text).find(|(_, line)| !is_comment(line) && readable(line)).map(|(n, _)| n) else {
         let complaint = Complaint::about_file(name, "lines with two numbers: position and ordinate", "none");
@@ -154,7 +157,7 @@ pub(super) fn read(name: &str, text: &str, options: &SpectrumOptions) -> Result<
             continue;
         }
         if raw.points.len() == MOST_POINTS {
-            let complaint = Complaint::at(name, number, 0, 0, "", format!("at most {MOST_POINTS} points"), "more");
+            let complaint = about_line(name, number, format!("at most {MOST_POINTS} points"), "more");
             return Err(complaint.hint("cut the file to the part that matters").into());
         }
         if complaints.0.len() >= MOST_COMPLAINTS {
