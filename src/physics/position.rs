@@ -83,7 +83,7 @@ pub struct Model {
     pub pictures: Vec<(MoietyIndex, Picture, String)>,
 }
 
-/// One parameter that positions are linear in.
+/// One parameter that positions depend on; before mixing they are linear in it.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash)]
 pub enum Parameter {
     /// Fundamental of a mode.
