@@ -198,11 +198,7 @@ mod tests {
             assert!((one[0] - low).abs() < 1e-9 && (one[1] - high).abs() < 1e-9, "{one:?}");
             let k = effective_constants(low, high, 85.0, 90.0, -45.0);
             let two = pair.levels(2);
-            for (level, sum) in two.iter().zip([
-                2.0 * (low + k.x_ll),
-                low + high + k.x_lh,
-                2.0 * (high + k.x_hh),
-            ]) {
+            for (level, sum) in two.iter().zip([2.0 * (low + k.x_ll), low + high + k.x_lh, 2.0 * (high + k.x_hh)]) {
                 assert!((level - sum).abs() < 1e-9, "{level} against {sum}");
             }
         }

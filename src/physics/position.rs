@@ -92,6 +92,8 @@ pub enum Parameter {
     X(usize, usize),
     /// g_ii.
     G(usize),
+    /// Entry of [`Model::resonances`]; only mixed levels depend on it.
+    Resonance(usize),
 }
 
 /// A position's derivatives by the parameters it depends on: (parameter, derivative), in a fixed order.
@@ -222,6 +224,7 @@ impl Model {
             Parameter::Nu(i) => self.nu_sigma[i],
             Parameter::X(i, j) => self.x(i, j).sigma,
             Parameter::G(i) => self.g[i].as_ref().map_or(0.0, |g| g.sigma),
+            Parameter::Resonance(at) => self.resonances[at].element.sigma,
         }
     }
 
@@ -231,6 +234,7 @@ impl Model {
             Parameter::Nu(i) => self.nu[i],
             Parameter::X(i, j) => self.x(i, j).value,
             Parameter::G(i) => self.g[i].as_ref().map_or(0.0, |g| g.value),
+            Parameter::Resonance(at) => self.resonances[at].element.value,
         }
     }
 

@@ -132,6 +132,15 @@ pub fn polyad(model: &Model, level: &Level) -> Vec<MixedLevel> {
     all
 }
 
+/// The element of all resonances between two levels, cm⁻¹; zero where nothing ties them.
+pub fn element(model: &Model, bra: &Level, ket: &Level) -> f64 {
+    let split = splits(model);
+    let ties = |r: &Resonance, up: bool| {
+        partner(model, &split, r, bra, up).filter(|(level, _)| level == ket).map(|(_, factor)| factor * r.element.value)
+    };
+    model.resonances.iter().filter_map(|r| ties(r, true).or_else(|| ties(r, false))).sum()
+}
+
 /// Which modes are split by angular momentum: degenerate ones with a given g, and those whose pair of quanta is tied to
 /// a non-degenerate mode.
 pub fn splits(model: &Model) -> Vec<bool> {
@@ -363,8 +372,7 @@ impl Block {
                 }
             }
             for &(row, column, number, factor) in &self.ties {
-                *slopes.entry(Parameter::Resonance(number)).or_default() +=
-                    2.0 * vector[row] * vector[column] * factor;
+                *slopes.entry(Parameter::Resonance(number)).or_default() += 2.0 * vector[row] * vector[column] * factor;
             }
             let mut shares: Vec<(Level, f64)> = (0..n)
                 .map(|k| (self.levels[k].clone(), vector[k] * vector[k]))
@@ -506,9 +514,8 @@ pub fn polyad_numbers(resonances: &[Vec<i64>], modes: usize) -> Vec<Vec<i64>> {
             if answer[k][entry] >= 0 {
                 continue;
             }
-            let lift = (0..answer.len()).find(|j| {
-                *j != k && answer[*j][entry] > 0 && answer[*j].iter().all(|e| *e >= 0)
-            });
+            let lift =
+                (0..answer.len()).find(|j| *j != k && answer[*j][entry] > 0 && answer[*j].iter().all(|e| *e >= 0));
             if let Some(j) = lift {
                 let by = answer[j].clone();
                 let times = (-answer[k][entry] + by[entry] - 1) / by[entry];

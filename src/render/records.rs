@@ -46,7 +46,7 @@ pub fn used_constants(table: &ModeTable, model: &Model, level: &Level) -> Vec<Us
         .into_iter()
         .filter_map(|(parameter, _)| {
             let (quantity, sourced) = match parameter {
-                Parameter::Nu(_) => return None,
+                Parameter::Nu(_) | Parameter::Resonance(_) => return None,
                 Parameter::X(i, j) => (format!("x({},{})", id(j), id(i)), model.x(i, j)),
                 Parameter::G(i) => (format!("g({})", id(i)), model.g[i].as_ref()?),
             };
