@@ -367,5 +367,10 @@ pub fn parameter_label(table: &ModeTable, parameter: Parameter) -> String {
         Parameter::Nu(i) => id(i).to_owned(),
         Parameter::X(i, j) => format!("x({}, {})", id(i), id(j)),
         Parameter::G(i) => format!("g({})", id(i)),
+        // The model keeps the resonance rows of the table in their order.
+        Parameter::Resonance(at) => match table.constants.iter().filter(|k| k.kind.is_resonance()).nth(at) {
+            Some(k) => format!("{}({}, {})", k.kind.name(), id(k.a), id(k.b)),
+            None => "resonance".to_owned(),
+        },
     }
 }
