@@ -7,7 +7,9 @@
 //! foreign share: the number of levels grows faster with the quanta than any constant penalty could hold back, the
 //! matched limit does. Probabilities are normalised over all levels within 4.5 σ and other origin.
 
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, BTreeSet};
+
+use rayon::prelude::*;
 
 use crate::band::{Band, BandList};
 use crate::enumerate::prediction::Predicted;
@@ -108,14 +110,23 @@ pub fn range_of(bands: &BandList) -> (f64, f64) {
 /// `range` equals `wanted`.
 fn matched_limit(levels: &[Predicted], range: (f64, f64), wanted: f64, assume: &Assumptions) -> f64 {
     let width = 2.0 * assume.resolution;
-    let mut bins: BTreeMap<i64, Vec<f64>> = BTreeMap::new();
+    // Strengths on a grid of a hundredth of a decade: far below their uncertainty, and each Φ is needed once per step.
+    let step = 0.01;
+    let mut bins: BTreeMap<i64, BTreeMap<i64, u32>> = BTreeMap::new();
     for level in levels.iter().filter(|l| (range.0..=range.1).contains(&l.position)) {
-        bins.entry((level.position / width).floor() as i64).or_default().push(level.strength.log10);
+        let strength = (level.strength.log10.max(-40.0) / step).round() as i64;
+        *bins.entry((level.position / width).floor() as i64).or_default().entry(strength).or_default() += 1;
     }
+    let strengths: BTreeSet<i64> = bins.values().flat_map(|bin| bin.keys().copied()).collect();
     let expected = |limit: f64| -> f64 {
-        let seen = bins
-            .values()
-            .map(|bin| 1.0 - bin.iter().map(|mu| 1.0 - normal_cdf((mu - limit) / assume.tau)).product::<f64>());
+        let unseen: BTreeMap<i64, f64> = strengths
+            .iter()
+            .map(|s| (*s, (-normal_cdf((*s as f64 * step - limit) / assume.tau)).ln_1p().max(-700.0)))
+            .collect();
+        let seen = bins.values().map(|bin| {
+            let log: f64 = bin.iter().map(|(s, n)| f64::from(*n) * unseen[s]).sum();
+            1.0 - log.exp()
+        });
         (1.0 - assume.lost) * seen.sum::<f64>()
     };
     let (mut low, mut high) = (-15.0, 3.0);
@@ -133,57 +144,96 @@ pub fn rank(levels: &[Predicted], bands: &BandList, assume: &Assumptions) -> Vec
     let count = bands.bands.len() as f64;
     let limit = matched_limit(levels, range, count * (1.0 - assume.foreign), assume);
     let density = assume.foreign * count.max(1.0) / (range.1 - range.0).max(1.0);
-    bands.bands.iter().map(|band| rank_one(levels, band, limit, density, assume)).collect()
+    let visible: Vec<f64> = levels
+        .par_iter()
+        .map(|level| (1.0 - assume.lost) * normal_cdf((level.strength.log10 - limit) / assume.tau))
+        .collect();
+    let widest = levels.iter().map(|l| l.variance).fold(0.0, f64::max);
+    bands
+        .bands
+        .par_iter()
+        .map(|band| {
+            let reach = REACH * (widest + band.sigma * band.sigma).sqrt();
+            let near = within(levels, band.position.inverse_cm(), reach);
+            rank_one(levels, &visible, near, band, density, assume)
+        })
+        .collect()
 }
 
-fn rank_one(levels: &[Predicted], band: &Band, limit: f64, foreign_density: f64, assume: &Assumptions) -> Ranked {
+/// Places of the levels within `reach` of `y`; `levels` ascend by position.
+fn within(levels: &[Predicted], y: f64, reach: f64) -> std::ops::Range<usize> {
+    let start = levels.partition_point(|l| l.position < y - reach);
+    start..levels.partition_point(|l| l.position <= y + reach).max(start)
+}
+
+fn rank_one(
+    levels: &[Predicted],
+    visible: &[f64],
+    near: std::ops::Range<usize>,
+    band: &Band,
+    foreign_density: f64,
+    assume: &Assumptions,
+) -> Ranked {
     let y = band.position.inverse_cm();
-    let mut weights: Vec<(usize, f64, Vec<Factor>)> = Vec::new();
-    for (index, level) in levels.iter().enumerate() {
+    let density_of = |level: &Predicted| {
         let variance = level.variance + band.sigma * band.sigma;
         let offset = y - level.position;
-        if offset * offset > REACH * REACH * variance {
-            continue;
-        }
-        let visible = (1.0 - assume.lost) * normal_cdf((level.strength.log10 - limit) / assume.tau);
-        let match_density = (-0.5 * offset * offset / variance).exp() / (std::f64::consts::TAU * variance).sqrt();
+        (offset * offset <= REACH * REACH * variance)
+            .then(|| (-0.5 * offset * offset / variance).exp() / (std::f64::consts::TAU * variance).sqrt())
+    };
+    let mut weights: Vec<(usize, f64)> =
+        near.filter_map(|index| Some((index, density_of(&levels[index])? * visible[index]))).collect();
+    let total = foreign_density + weights.iter().map(|(_, w)| w).sum::<f64>();
+    weights.sort_by(|a, b| b.1.total_cmp(&a.1).then(a.0.cmp(&b.0)));
+    let reasons = |index: usize| {
+        let level = &levels[index];
+        let (p, variance) = (visible[index], level.variance + band.sigma * band.sigma);
+        let odds = (density_of(level).unwrap_or(0.0) / foreign_density).max(1.0e-300).log10();
         let mut factors = vec![
             Factor {
-                reason: format!("{:+.0} cm⁻¹ off at a standard uncertainty of {:.0}", offset, variance.sqrt()),
-                log10: (match_density / foreign_density).log10(),
+                reason: format!(
+                    "{:+.0} cm⁻¹ off at a standard uncertainty of {:.0}",
+                    y - level.position,
+                    variance.sqrt()
+                ),
+                log10: odds,
             },
             Factor {
-                reason: format!("visible with probability {visible:.2} at its expected strength"),
-                log10: visible.max(1.0e-300).log10(),
+                reason: format!("visible with probability {p:.2} at its expected strength"),
+                log10: p.max(1.0e-300).log10(),
             },
         ];
         if level.infrared == Activity::Forbidden {
             factors
                 .push(Factor { reason: format!("forbidden: {}; counted in the strength", level.reason), log10: 0.0 });
         }
-        weights.push((index, visible * match_density, factors));
-    }
-    let total = foreign_density + weights.iter().map(|(_, w, _)| w).sum::<f64>();
-    weights.sort_by(|a, b| b.1.total_cmp(&a.1).then(a.0.cmp(&b.0)));
+        factors
+    };
     let offers = weights
         .into_iter()
-        .map(|(level, weight, factors)| Offer { level, probability: weight / total, factors })
+        .enumerate()
+        .map(|(place, (level, weight))| Offer {
+            level,
+            probability: weight / total,
+            factors: if place < assume.listed { reasons(level) } else { Vec::new() },
+        })
         .collect();
-    Ranked { offers, foreign: foreign_density / total, chance: chance(levels, band, limit, assume) }
+    Ranked { offers, foreign: foreign_density / total, chance: chance(levels, visible, band) }
 }
 
-fn chance(levels: &[Predicted], band: &Band, limit: f64, assume: &Assumptions) -> Chance {
+fn chance(levels: &[Predicted], visible: &[f64], band: &Band) -> Chance {
     let y = band.position.inverse_cm();
-    let near: Vec<&Predicted> = levels.iter().filter(|l| (l.position - y).abs() <= DENSITY_REACH).collect();
+    let range = within(levels, y, DENSITY_REACH);
+    let near = &levels[range.clone()];
     let mut sigmas: Vec<f64> = near.iter().map(|l| (l.variance + band.sigma * band.sigma).sqrt()).collect();
     sigmas.sort_by(f64::total_cmp);
     let tolerance = 2.0 * sigmas.get(sigmas.len() / 2).copied().unwrap_or(band.sigma);
     let share = (tolerance / DENSITY_REACH).min(1.0);
     let mut by_order: BTreeMap<u32, f64> = BTreeMap::new();
     let mut weighted = 0.0;
-    for level in near {
+    for (level, visible) in near.iter().zip(&visible[range]) {
         *by_order.entry(level.level.order()).or_default() += share;
-        weighted += share * (1.0 - assume.lost) * normal_cdf((level.strength.log10 - limit) / assume.tau);
+        weighted += share * visible;
     }
     Chance { tolerance, by_order, weighted }
 }

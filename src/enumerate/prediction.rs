@@ -1,5 +1,7 @@
 //! Predicted transitions of a table in a window: position, uncertainty, strength, width, activity.
 
+use rayon::prelude::*;
+
 use super::walk::{Filter, TooManyLevels, levels_in};
 use crate::level::{Excitation, Level};
 use crate::mode::{ModeTable, Motion};
@@ -155,7 +157,7 @@ fn from_ground(
     let found = levels_in(model, (low - margin, high + margin), request.quanta, &Filter::default(), request.budget)?;
     if model.resonances.is_empty() {
         return Ok(found
-            .into_iter()
+            .into_par_iter()
             .map(|f| {
                 let variance = model.variance(&f.level);
                 describe(f.level, f.position, variance, Vec::new(), strengths, symmetry)
