@@ -4,9 +4,14 @@ use std::path::{Path, PathBuf};
 
 use super::output::{Format, OutputOptions};
 use super::{Failure, Outcome, input, tell};
+use crate::assign::candidate::Candidate;
+use crate::assign::joint::{self, JointOptions};
+use crate::assign::sampler::Effort;
 use crate::assign::single::{Assumptions, range_of, rank};
-use crate::enumerate::prediction::{BUDGET, Request, predict};
+use crate::enumerate::prediction::{BUDGET, Predicted, Request, predict};
 use crate::physics::anharmonicity::resolve;
+use crate::physics::strength::FORBIDDEN_STEP;
+use crate::physics::symmetry::Activity;
 use crate::read::band_list;
 use crate::render::{assign as render, records};
 
@@ -27,6 +32,15 @@ pub struct Assign {
     /// Candidates listed per band.
     #[arg(long, default_value_t = 10, value_name = "N")]
     pub top: usize,
+    /// Rank every band by itself instead of all jointly.
+    #[arg(long)]
+    pub separately: bool,
+    /// Members of the sampler's population.
+    #[arg(long, default_value_t = 256, value_name = "N", value_parser = clap::value_parser!(u32).range(8..=100_000))]
+    pub particles: u32,
+    /// Seed of the sampler.
+    #[arg(long, default_value_t = 1)]
+    pub seed: u64,
     #[command(flatten)]
     output: OutputOptions,
 }
@@ -59,18 +73,36 @@ impl Assign {
             hot: None,
         };
         let predicted = predict(&table, &model.value, &request).map_err(|e| Failure::Usage(e.to_string()))?;
-        let assume = Assumptions { listed: self.top, ..Assumptions::default() };
-        let ranked = rank(&predicted.value, &bands, &assume);
-        let report = records::assign_report(
-            &table,
-            &model.value,
-            &bands,
-            self.quanta,
-            &predicted.value,
-            &ranked,
-            self.top,
-            &notes,
-        );
+        let report = if self.separately {
+            let assume = Assumptions { listed: self.top, ..Assumptions::default() };
+            let ranked = rank(&predicted.value, &bands, &assume);
+            records::assign_report(
+                &table,
+                &model.value,
+                &bands,
+                self.quanta,
+                &predicted.value,
+                &ranked,
+                self.top,
+                &notes,
+            )
+        } else {
+            let candidates: Vec<Candidate> = predicted.value.iter().map(candidate).collect();
+            let effort = Effort { particles: self.particles as usize, seed: self.seed, ..Effort::default() };
+            let options = JointOptions { effort, ..JointOptions::default() };
+            let answer = joint::assign(&model.value, &table, &candidates, &bands, &[], &options);
+            let input = records::AssignInput {
+                table: &table,
+                model: &model.value,
+                bands: &bands,
+                quanta: self.quanta,
+                predicted: &predicted.value,
+                top: self.top,
+            };
+            let report = records::joint_report(&input, &answer, &notes);
+            notes.extend(answer.notes);
+            report
+        };
         tell(&notes);
         let text = match self.output.format {
             Format::Table => render::table(&report),
@@ -88,5 +120,17 @@ impl Assign {
                 && b.families.first().is_none_or(|f| f.probability <= b.other_origin.probability)
         });
         Ok(if unexplained { Outcome::Unexplained } else { Outcome::Done })
+    }
+}
+
+/// A predicted transition as the ranking sees it. The penalty of a selection rule is the ranking's own.
+fn candidate(predicted: &Predicted) -> Candidate {
+    let forbidden = predicted.infrared == Activity::Forbidden;
+    Candidate {
+        level: predicted.level.clone(),
+        mean: predicted.position,
+        forbidden,
+        strength: Some(if forbidden { predicted.strength.log10 - FORBIDDEN_STEP } else { predicted.strength.log10 }),
+        mixed: None,
     }
 }

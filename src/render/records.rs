@@ -5,11 +5,13 @@ use std::collections::BTreeMap;
 use itertools::Itertools;
 
 use super::report::{
-    AssignReport, BandRecord, CandidateRecord, ChanceRecord, ExpectedWindow, FactorRecord, FamilyRecord, LevelRecord,
-    OtherOriginRecord, PredictReport, Share, TableSummary, UsedConstant,
+    AssignReport, BandRecord, CandidateRecord, ChanceRecord, CoincidenceRecord, ExpectedWindow, FactorRecord,
+    FamilyRecord, LevelRecord, MissingRecord, OtherOriginRecord, PredictReport, Share, TableSummary, UpdatedModeRecord,
+    UsedConstant,
 };
+use crate::assign::joint::{BandAnswer, JointAnswer};
 use crate::assign::single::{Ranked, verdict};
-use crate::band::BandList;
+use crate::band::{Band, BandList};
 use crate::enumerate::prediction::{Predicted, family, family_text};
 use crate::level::Level;
 use crate::mode::{ModeTable, TableOrigin};
@@ -223,17 +225,7 @@ pub fn assign_report(
             .collect();
         let leading = families.first().map_or(0.0, |f| f.probability);
         let word = verdict(leading, answer.foreign, answer.chance.weighted);
-        let reason = match families.first() {
-            None => "no level of the table comes near; another substance, an artefact, or more quanta".to_owned(),
-            Some(f) => format!(
-                "{} on {} has {:.2}; {:.1} sums meet this position by chance, {:.1} of them strong enough to be seen",
-                f.family.join(" + "),
-                f.moieties.join(", "),
-                f.probability,
-                answer.chance.expected(),
-                answer.chance.weighted
-            ),
-        };
+        let reason = verdict_sentence(families.first(), answer.chance.expected(), answer.chance.weighted);
         BandRecord {
             band: band.id.clone(),
             observed_cm1: band.position.inverse_cm(),
@@ -281,4 +273,138 @@ pub fn family_key(table: &ModeTable, level: &Level) -> (Vec<String>, Vec<String>
         .dedup()
         .collect();
     (motions, moieties)
+}
+
+/// What a report of `assign` is made from, besides the answer.
+pub struct AssignInput<'a> {
+    /// The table.
+    pub table: &'a ModeTable,
+    /// Its model.
+    pub model: &'a Model,
+    /// The bands.
+    pub bands: &'a BandList,
+    /// Most quanta.
+    pub quanta: u8,
+    /// Transitions, one a candidate.
+    pub predicted: &'a [Predicted],
+    /// Candidates listed per band.
+    pub top: usize,
+}
+
+/// The report of `assign` from a joint answer.
+pub fn joint_report(input: &AssignInput<'_>, answer: &JointAnswer, notes: &[Note]) -> AssignReport {
+    let AssignInput { table, model, bands, quanta, predicted, top } = input;
+    let record = |(band, found): (&Band, &BandAnswer)| {
+        let mut levels: Vec<LevelRecord> =
+            found.candidates.iter().take(*top).map(|c| level_record(table, model, &predicted[c.candidate])).collect();
+        classify(&mut levels);
+        let candidates = levels
+            .into_iter()
+            .zip(&found.candidates)
+            .map(|(level, c)| CandidateRecord {
+                level,
+                probability: c.probability,
+                offset_cm1: c.offset_cm1,
+                factors: c.factors.iter().map(joint_factor).collect(),
+            })
+            .collect();
+        let families: Vec<FamilyRecord> = found
+            .families
+            .iter()
+            .map(|f| {
+                let (family, moieties) = grouped(&f.family, &f.moieties);
+                FamilyRecord { family, moieties, probability: f.probability }
+            })
+            .collect();
+        // Families too improbable to be told one by one are levels that are not listed.
+        let told: f64 = families.iter().map(|f| f.probability).sum();
+        let foreign = found.other_origin.foreign;
+        let unlisted = (1.0 - told - foreign).max(0.0);
+        let leading = families.first().map_or(0.0, |f| f.probability);
+        let chance = &found.chance_matches;
+        let word = verdict(leading, foreign + unlisted, chance.weighted);
+        let tolerance = 2.0 * found.candidates.first().map_or(band.sigma, |c| c.position_sigma_cm1.hypot(band.sigma));
+        BandRecord {
+            band: band.id.clone(),
+            observed_cm1: band.position.inverse_cm(),
+            sigma_cm1: band.sigma,
+            observed_um: band.position.vacuum_micrometres(),
+            candidates,
+            verdict: word.to_owned(),
+            verdict_reason: verdict_sentence(families.first(), chance.expected, chance.weighted),
+            families,
+            other_origin: OtherOriginRecord { probability: foreign + unlisted, foreign, unlisted },
+            chance_matches: ChanceRecord {
+                expected: chance.expected,
+                tolerance_cm1: tolerance,
+                weighted: chance.weighted,
+                by_order: chance.by_order.iter().map(|(order, n)| (order.to_string(), *n)).collect(),
+            },
+        }
+    };
+    AssignReport {
+        schema: "bandwright/assign/1".to_owned(),
+        table: summary(table),
+        bands_from: bands.name.clone(),
+        sample: bands.sample.clone(),
+        quanta: *quanta,
+        method:
+            "all bands jointly: positions move fundamentals and constants, a level explains at most one band, strength \
+                 models and inflated uncertainties are averaged over"
+                .to_owned(),
+        bands: bands.bands.iter().zip(&answer.bands).map(record).collect(),
+        coincidence: CoincidenceRecord::default(),
+        updated_modes: answer
+            .updated
+            .iter()
+            .map(|u| UpdatedModeRecord {
+                mode: u.name.clone(),
+                before_cm1: u.before_cm1,
+                before_sigma_cm1: u.before_sigma_cm1,
+                after_cm1: u.after_cm1,
+                sigma_cm1: u.sigma_cm1,
+                flagged: u.suspicious,
+            })
+            .collect(),
+        missing: answer
+            .missing
+            .iter()
+            .map(|m| MissingRecord {
+                label: m.label.clone(),
+                position_cm1: m.position_cm1,
+                sigma_cm1: m.sigma_cm1,
+                probability: m.expected,
+            })
+            .collect(),
+        inflation: answer.inflation,
+        error_bar: answer.error_bar,
+        log10_evidence: answer.log10_evidence,
+        notes: notes.iter().chain(&answer.notes).map(|n| n.0.clone()).collect(),
+    }
+}
+
+fn joint_factor(factor: &crate::assign::witness::Factor) -> FactorRecord {
+    FactorRecord { reason: factor.reason.clone(), log10: factor.log10 }
+}
+
+/// Motions with counts and moieties, each once.
+fn grouped(motions: &[&'static str], moieties: &[String]) -> (Vec<String>, Vec<String>) {
+    let counted = motions
+        .iter()
+        .dedup_with_count()
+        .map(|(n, motion)| if n == 1 { (*motion).to_owned() } else { format!("{n} {motion}") });
+    (counted.collect(), moieties.iter().cloned().sorted().dedup().collect())
+}
+
+/// The sentence beside a verdict.
+fn verdict_sentence(leading: Option<&FamilyRecord>, expected: f64, weighted: f64) -> String {
+    match leading {
+        None => "no level of the table comes near; another substance, an artefact, or more quanta".to_owned(),
+        Some(f) => format!(
+            "{} on {} has {:.2}; {expected:.1} sums meet this position by chance, {weighted:.1} of them strong enough to be seen",
+            f.family.join(" + "),
+            f.moieties.join(", "),
+            f.probability
+        ),
+    }
 }
