@@ -790,6 +790,70 @@ fn a_spectrum_that_contradicts_its_label_draws_a_note() {
 }
 
 #[test]
+fn impostors_saturation_gaps_and_open_ends_are_told() {
+    let seen = |bands: &[(f64, f64, f64)], change: &dyn Fn(&mut Spectrum), window: Option<(f64, f64)>| {
+        let mut spectrum = made(bands, 2.0, 0.0, 0);
+        change(&mut spectrum);
+        let window = window.and_then(|(low, high)| Window::between(low, high));
+        let picked = pick(&spectrum, &PickOptions { window, ..PickOptions::default() });
+        let notes = picked.notes.iter().map(|n| n.0.clone()).collect::<Vec<_>>().join("\n");
+        (picked.value, notes)
+    };
+    let shift = |by: f64| move |s: &mut Spectrum| s.wavenumbers.iter_mut().for_each(|v| *v -= by);
+    // A line at 3869 cm-1, 8 cm-1 wide, and a band of the same place that is ten times wider.
+    let (vapour, notes) = seen(&[(4869.0, 0.1, 8.0)], &shift(1000.0), Some((3500.0, 4500.0)));
+    assert!(vapour.bands[0].band.note.contains("water vapour") && notes.contains("water vapour"), "{notes}");
+    let (wide, _) = seen(&[(4869.0, 0.1, 80.0)], &shift(1000.0), Some((3500.0, 4500.0)));
+    assert_eq!(wide.bands[0].band.note, "");
+    let (organic, notes) = seen(&[(4929.0, 0.1, 30.0)], &shift(2000.0), Some((2100.0, 3030.0)));
+    assert!(organic.bands[0].band.note.contains("organic") && notes.contains("organic residue"), "{notes}");
+    let (_, notes) = seen(&[(5000.0, 0.3, 60.0)], &shift(3500.0), Some((1000.0, 2500.0)));
+    assert!(notes.contains("reststrahlen"), "{notes}");
+    let (saturated, notes) = seen(&[(5150.0, 0.97, 200.0)], &|_| {}, None);
+    assert!(saturated.bands[0].saturated && notes.contains("b1: saturated"), "{notes}");
+    let (_, notes) = seen(
+        &[(5150.0, 0.3, 200.0)],
+        &|s| {
+            let keep: Vec<bool> = s.wavenumbers.iter().map(|v| !(6000.0..6200.0).contains(v)).collect();
+            let mut at = keep.iter();
+            s.wavenumbers.retain(|_| *at.next().unwrap());
+            let mut at = keep.iter();
+            s.ordinates.retain(|_| *at.next().unwrap());
+        },
+        None,
+    );
+    assert!(notes.contains("nothing was measured between 5998 and 6200"), "{notes}");
+    // The flank of a strong band below the window: a band on it has an open flank, a bare fall is an edge.
+    let (open, _) = seen(&[(3800.0, 0.9, 500.0), (4060.0, 0.3, 80.0)], &|_| {}, None);
+    assert!(open.bands[0].band.note.contains("one flank is not closed"), "{:?}", open.bands);
+    let (edge, _) = seen(&[(3900.0, 0.9, 300.0)], &|_| {}, None);
+    assert_eq!(edge.bands.iter().map(|b| b.band.feature).collect::<Vec<_>>(), [Feature::Edge], "{:?}", edge.bands);
+    let (nothing, notes) = seen(&[], &|_| {}, None);
+    assert!(nothing.bands.is_empty() && notes.contains("no band stands out"), "{notes}");
+}
+
+#[test]
+fn the_kubelka_munk_function_is_turned_back_into_reflectance() {
+    // F of 0.5 is 0.25, of 0.25 is 1.125, of 0.4 is 0.45: (1 − R)²/(2 R) by hand.
+    let text = "cm-1,Kubelka-Munk\n4000,0.25\n5000,1.125\n6250,0.45\n";
+    let spectrum = super_read(text).unwrap().value;
+    assert_eq!(spectrum.ordinate, Ordinate::Reflectance);
+    for (found, expected) in spectrum.ordinates.iter().zip([0.5, 0.25, 0.4]) {
+        assert!((found - expected).abs() < 1e-12);
+    }
+}
+
+#[test]
+fn names_of_columns_with_blanks_still_say_the_unit() {
+    let text = "Wavelength (nm)  Reflectance factor\n1250 0.6\n1600 0.4\n2000 0.25\n";
+    let spectrum = super_read(text).unwrap().value;
+    assert_eq!((spectrum.axis, spectrum.ordinate), (Some(AxisUnit::Nanometre), Ordinate::Reflectance));
+    let read = super_read("wavelength_nm,sample a\n1250,0.6\n1600,0.4\n2000,0.25\n").unwrap();
+    assert_eq!(read.value.ordinate, Ordinate::Reflectance, "a letter in a name is no ordinate");
+    assert!(read.notes.iter().any(|n| n.0.contains("taken as reflectance")));
+}
+
+#[test]
 fn absorbance_and_reflectance_give_the_same_bands() {
     let reflectance = made(&[(5150.0, 0.4, 150.0), (6900.0, 0.25, 200.0)], 4.0, 0.0, 0);
     let mut absorbance = reflectance.clone();

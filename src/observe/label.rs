@@ -43,6 +43,14 @@ impl Label {
     }
 }
 
+/// The hydrate that a title names by its formula, like `Gypsum CaSO4.2H2O`; other titles say nothing that can be checked.
+pub fn hydrate_in(title: &str) -> Option<Label> {
+    title
+        .split([' ', ',', ';', '_'])
+        .filter(|word| word.len() > 4 && word.contains("H2O"))
+        .find_map(|word| Label::from_text(word).filter(|label| *label == Label::Hydrate))
+}
+
 /// How the bands contradict a label; no notes when they do not. What the window does not show cannot be judged, and that is
 /// said in the second list.
 pub fn contradictions(label: Label, bands: &[PickedBand], window: Window) -> (Vec<Note>, Vec<Note>) {
@@ -92,5 +100,7 @@ mod tests {
         }
         assert_eq!(Label::from_text("wet?"), None);
         assert_eq!(Label::from_text(""), None);
+        assert_eq!(hydrate_in("Gypsum CaSO4.2H2O, HS333.3B"), Some(Label::Hydrate));
+        assert_eq!(hydrate_in("H2O vapour over CaSO4"), None);
     }
 }

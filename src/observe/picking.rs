@@ -5,7 +5,7 @@ use serde::Serialize;
 use super::centre::{centroid, crossings, parabola};
 use super::continuum::Continuum;
 use super::impostor;
-use super::label::{Label, contradictions};
+use super::label::{Label, contradictions, hydrate_in};
 use super::noise;
 use super::prominence::{Peak, peaks};
 use super::reflectance::apparent_absorbance;
@@ -53,7 +53,7 @@ pub struct PickOptions {
     pub significance: f64,
     /// Whether shoulders and edges are looked for.
     pub shoulders: bool,
-    /// What the sample's label says, to be checked.
+    /// What the sample's label says, to be checked; a hydrate named by its formula in the title is checked without it.
     pub label: Option<Label>,
 }
 
@@ -113,7 +113,8 @@ pub struct Picked {
 /// # Method
 /// Continuum and depth over wavenumber; maxima of depth whose prominence exceeds the least depth and the noise. The position
 /// is the vertex of the parabola through the deepest points; its uncertainty joins the noise limit, the scatter of parabola,
-/// centroid and midpoint, the pull of neighbours, the flat bottom of a saturated band, an open flank, and an unstated medium.
+/// centroid and midpoint, the pull of neighbours, the flat bottom of a saturated band, the choice of continuum, and an unstated
+/// medium.
 pub fn pick(spectrum: &Spectrum, options: &PickOptions) -> Noted<Picked> {
     let mut notes = Vec::new();
     let name = &spectrum.name;
@@ -217,13 +218,16 @@ pub fn pick(spectrum: &Spectrum, options: &PickOptions) -> Noted<Picked> {
     picked.list.bands = picked.bands.iter().map(|b| b.band.clone()).collect();
     let limit = least.max(significance * picked.noise * smooth.noise_factor).min(0.99);
     picked.list.detection_limit = Some(apparent_absorbance(1.0 - limit));
-    remarks(spectrum, &picked, &x, &mut notes);
-    if let Some(label) = options.label {
-        let (against, unseen) =
-            contradictions(label, &picked.bands, Window::between(x[0], x[x.len() - 1]).unwrap_or(window));
-        picked.contradictions = against.clone();
-        notes.extend(against);
-        notes.extend(unseen);
+    remarks(spectrum, options, &picked, &x, &mut notes);
+    // A formula in the title is a label as well, but nobody asked: what contradicts it is only noted.
+    if let Some(label) = options.label.or_else(|| hydrate_in(&spectrum.title)) {
+        let covered = Window::between(x[0], x[x.len() - 1]).unwrap_or(window);
+        let (against, unseen) = contradictions(label, &picked.bands, covered);
+        notes.extend(against.clone());
+        if options.label.is_some() {
+            picked.contradictions = against;
+            notes.extend(unseen);
+        }
     }
     picked.continuum = continuum;
     picked.depths = depths;
@@ -409,12 +413,12 @@ impl Data<'_> {
         } else {
             0.0
         };
-        let open = self.open_flank(position, depth, seen.unwrap_or(out_width));
-        if open.is_some() {
+        let (continuum_sigma, open) = self.continuum_sigma(position, depth, seen.unwrap_or(out_width));
+        if open {
             remarks.push("one flank is not closed within the window".to_owned());
         }
         remarks.extend(impostor::warning(position, Some(out_width)).map(str::to_owned));
-        let parts = [limit, scatter(&estimates), pull, bottom, open.unwrap_or(0.0), self.medium_sigma(position)];
+        let parts = [limit, scatter(&estimates), pull, bottom, continuum_sigma, self.medium_sigma(position)];
         let sigma = parts.into_iter().map(|s| s * s).sum::<f64>().sqrt();
         let band = Band {
             id: String::new(),
@@ -444,33 +448,28 @@ impl Data<'_> {
         }
     }
 
-    /// The uncertainty of a band between the last two vertices of a continuum that ends with the window and not with the
-    /// band: half of what the slope of that piece of continuum moves the band by, (H′/H)(1 − D) s² / D.
-    fn open_flank(&self, position: f64, depth: f64, width: f64) -> Option<f64> {
+    /// What the choice of continuum may move a band by, and whether the band lies on an open flank: between the last two
+    /// vertices of a continuum that ends lower, with the window and not with the band.
+    ///
+    /// A slope moves a Gaussian by (H′/H)(1 − D) s² / D (derived for this project). Whether the continuum multiplies (then the
+    /// division undoes it) or adds (then all of it stays) is not known: evenly between, hence a share of 1/√12; half of it
+    /// where the flank is open and the slope itself is in doubt.
+    fn continuum_sigma(&self, position: f64, depth: f64, width: f64) -> (f64, bool) {
         let vertices = &self.continuum.vertices;
-        let n = vertices.len();
-        let (low, high) = (vertices.get(1)?.0, vertices.get(n.checked_sub(2)?)?.0);
-        let (inner, outer) = if position < low {
-            (vertices[1], vertices[0])
-        } else if position > high {
-            (vertices[n - 2], vertices[n - 1])
+        let right = vertices.partition_point(|v| v.0 <= position).clamp(1, vertices.len().saturating_sub(1).max(1));
+        let (Some(a), Some(b)) = (vertices.get(right - 1), vertices.get(right)) else { return (0.0, false) };
+        let absorbing = self.spectrum.ordinate == Ordinate::Absorbance;
+        let slope = if absorbing {
+            std::f64::consts::LN_10 * (b.1 - a.1) / (b.0 - a.0)
         } else {
-            return None;
+            (b.1 - a.1) / (b.0 - a.0) / (0.5 * (a.1 + b.1)).abs().max(1.0e-6)
         };
         // A continuum that comes back to its height has closed the band.
-        let lower =
-            |a: f64, b: f64| if self.spectrum.ordinate == Ordinate::Absorbance { -a < -1.1 * b } else { a < 0.9 * b };
-        if !lower(outer.1, inner.1) {
-            return None;
-        }
-        let slope = if self.spectrum.ordinate == Ordinate::Absorbance {
-            std::f64::consts::LN_10 * (outer.1 - inner.1) / (outer.0 - inner.0)
-        } else {
-            let middle = 0.5 * (outer.1 + inner.1);
-            (outer.1 - inner.1) / (outer.0 - inner.0) / middle.abs().max(1.0e-6)
-        };
+        let falls = |outer: f64, inner: f64| if absorbing { outer > 1.1 * inner } else { outer < 0.9 * inner };
+        let open = (right == 1 && falls(a.1, b.1)) || (right + 1 == vertices.len() && falls(b.1, a.1));
         let s = width / 2.355;
-        Some((0.5 * slope.abs() * (1.0 - depth) * s * s / depth.max(1.0e-3)).min(width / 2.0))
+        let shift = (slope.abs() * (1.0 - depth) * s * s / depth.max(1.0e-3)).min(width);
+        (if open { 0.5 * shift } else { shift / 12.0_f64.sqrt() }, open)
     }
 
     /// A band of the list from a shoulder.
@@ -555,7 +554,7 @@ fn scatter(values: &[f64]) -> f64 {
 }
 
 /// Notes about the spectrum as a whole.
-fn remarks(spectrum: &Spectrum, picked: &Picked, x: &[f64], notes: &mut Vec<Note>) {
+fn remarks(spectrum: &Spectrum, options: &PickOptions, picked: &Picked, x: &[f64], notes: &mut Vec<Note>) {
     let name = &spectrum.name;
     let steps: Vec<f64> = x.windows(2).map(|pair| pair[1] - pair[0]).collect();
     // A step grows with the square of the wavenumber where wavelengths are evenly spaced: neighbours are compared.
@@ -567,6 +566,11 @@ fn remarks(spectrum: &Spectrum, picked: &Picked, x: &[f64], notes: &mut Vec<Note
                 x[k + 2]
             )));
         }
+    }
+    if let (Some(resolution), None, false) = (spectrum.resolution, options.resolution, picked.bands.is_empty()) {
+        notes.push(Note::new(format!(
+            "{name}: widths are freed of the resolution that the file states, {resolution:.1} cm-1 (--resolution says another)"
+        )));
     }
     let say = |notes: &mut Vec<Note>, which: Vec<&str>, what: &str| {
         if !which.is_empty() {

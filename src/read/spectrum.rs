@@ -172,16 +172,29 @@ pub(super) fn ordinate_of(text: &str) -> Option<Ordinate> {
     let list = words(text);
     let begins = |names: &[&str]| list.iter().any(|w| names.iter().any(|n| w.starts_with(n)));
     let is = |names: &[&str]| list.iter().any(|w| names.contains(&w.as_str()));
+    // One letter is a name only where it stands alone or beside a percent sign: `sample a` is no absorbance.
+    let letter = |name: &str| {
+        let letters: Vec<&str> = list.iter().map(|w| w.trim_matches('%')).filter(|w| !w.is_empty()).collect();
+        letters == [name]
+    };
     // `log(1/R)` is an absorbance although it names the reflectance: the logarithm is looked for first.
-    if begins(&["absorb", "log", "kubelka", "extinction", "-log"]) || is(&["abs", "a", "k-m"]) {
+    if begins(&["absorb", "extinction", "kubelka"])
+        || is(&["abs", "log", "log10", "lg", "-log", "-log10", "k-m"])
+        || letter("a")
+    {
         Some(Ordinate::Absorbance)
-    } else if begins(&["transmi", "%t"]) || is(&["t", "t%"]) {
+    } else if begins(&["transmi"]) || letter("t") {
         Some(Ordinate::Transmittance)
-    } else if begins(&["reflect", "%r"]) || is(&["r", "r%", "refl"]) {
+    } else if begins(&["reflect"]) || is(&["refl"]) || letter("r") {
         Some(Ordinate::Reflectance)
     } else {
         None
     }
+}
+
+/// Whether a description names the Kubelka–Munk function.
+fn is_kubelka_munk(text: &str) -> bool {
+    words(text).iter().any(|w| w.starts_with("kubelka") || w == "k-m")
 }
 
 /// The medium that a description names.
@@ -272,7 +285,18 @@ pub(super) fn assemble(
         let complaint = Complaint::about_file(&name, "at least three points of a spectrum", found);
         return Err(complaint.hint("two columns of numbers: position and ordinate, one point a line").into());
     }
-    let ordinate = ordinate(&name, options, &ordinate_words, &mut notes);
+    let mut ordinate = ordinate(&name, options, &ordinate_words, &mut notes);
+    if options.ordinate.is_none() && is_kubelka_munk(&ordinate_words) {
+        // The inverse of F = (1 − R)² / (2 R), in the form that loses no digits.
+        for value in &mut ordinates {
+            let f = value.max(0.0);
+            *value = 1.0 / (1.0 + f + (f * f + 2.0 * f).sqrt());
+        }
+        ordinate = Ordinate::Reflectance;
+        notes.push(Note::new(format!(
+            "{name}: the ordinate is the Kubelka-Munk function; it was turned into reflectance"
+        )));
+    }
     scale(&name, options, ordinate, &ordinate_words, &mut ordinates, &mut notes);
     let middle = axis.wavenumber(points[points.len() / 2].x, medium).ok();
     let resolution = resolution

@@ -144,13 +144,15 @@ pub(super) fn read(name: &str, text: &str, options: &SpectrumOptions) -> Result<
     let header = read_head(text, first, layout, &mut raw);
     let width = numbered_lines(text).find(|(n, _)| *n == first).map_or(2, |(_, line)| layout.cut(line).len());
     let (x_at, y_at) = choose_columns(name, &header, width, options, &mut notes)?;
-    if let Some(text) = header.get(x_at) {
-        raw.axis_words = format!("{text} {}", raw.axis_words);
-        raw.medium_words = format!("{text} {}", raw.medium_words);
-    }
-    if let Some(text) = header.get(y_at) {
-        raw.ordinate_words = format!("{text} {}", raw.ordinate_words);
-    }
+    // Blanks inside the names of columns make more names than columns: then the whole line describes both.
+    let described = |at: usize| match header.len() == width {
+        true => header[at].clone(),
+        false => header.join(" "),
+    };
+    // A stated unit goes before the name of a column.
+    raw.axis_words = if raw.axis_words.is_empty() { described(x_at) } else { raw.axis_words };
+    raw.ordinate_words = if raw.ordinate_words.is_empty() { described(y_at) } else { raw.ordinate_words };
+    raw.medium_words = if raw.medium_words.is_empty() { described(x_at) } else { raw.medium_words };
     let mut complaints = Complaints::default();
     for (number, line) in numbered_lines(text).skip(first - 1) {
         if is_comment(line) || line.chars().all(|c| matches!(c, ',' | ';' | '\t' | ' ')) {
