@@ -147,6 +147,7 @@ fn check_finds_the_faults_it_is_made_for() {
     assert_eq!(output.status.code(), Some(1), "{}", told(&output));
     let text = answer(&output);
     for part in [
+        "species `B9` is not in point group C2v",
         "900 cm⁻¹ is impossible for a oh-stretch",
         "an uncertainty of zero",
         "2 bends in one water",
