@@ -22,5 +22,9 @@ pub mod chance;
 
 pub mod joint;
 
+pub mod simulation;
+
+pub mod reliability;
+
 /// Each band by itself.
 pub mod single;

@@ -1,1 +1,5 @@
 //! Companions, missing bands, advice, screening.
+
+pub mod companion;
+
+pub mod splitting;

@@ -3,11 +3,16 @@
 //! an independent numerical prototype.
 
 use approx::assert_relative_eq;
+use bandwright::assign::candidate::Candidate;
 use bandwright::assign::kernel::{Conditioned, ParameterNumbers, Slopes, log_normal, log_sum, normal_cdf};
+use bandwright::assign::offers::noticed;
 use bandwright::assign::problem::{Offer, Problem, Shares, Target};
 use bandwright::assign::sampler::{Effort, sample};
+use bandwright::evidence::companion::{exchanged_place, found, level_ratio, list_factor};
 use bandwright::level::Level;
+use bandwright::mode::{Mode, ModeTable, Motion};
 use bandwright::physics::position::{Model, Parameter};
+use bandwright::quantity::Wavenumber;
 use rand::{Rng, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 
@@ -418,4 +423,72 @@ fn probabilities_of_a_band_sum_to_one() {
             assert!((sum - 1.0).abs() < 1e-9, "{sum}");
         }
     }
+}
+
+#[test]
+fn a_listed_strength_has_the_worked_density() {
+    // Strength −0.9 with 0.15, τ 0.5, limit −1.2.
+    let variance = 0.25 + 0.15 * 0.15;
+    assert!((log_normal(-0.9 + 1.9, variance) + 2.103_743).abs() < PRINTED);
+    assert!((log_normal(-0.9 + 2.3, variance) + 3.865_210).abs() < PRINTED);
+    let other = std::f64::consts::LN_2 - 2.0 * (-0.9 + 1.2);
+    assert!((other - 0.093_147).abs() < PRINTED);
+}
+
+#[test]
+fn companions_have_the_worked_factors() {
+    let present = found(Some(0.3), 3, 0.15);
+    assert!((present - 0.776_744).abs() < PRINTED);
+    // Nothing is seen in the hydrate of another anion: applied to the posterior with the first band assigned.
+    let weights = [0.666_907 * (1.0 - present), 0.010_680 * (1.0 - 0.15), 0.322_414 * 0.5];
+    let total: f64 = weights.iter().sum();
+    for (w, printed) in weights.iter().zip([0.466_486, 0.028_441, 0.505_073]) {
+        // The posterior that enters is printed to six decimals.
+        assert!((w / total - printed).abs() < 2e-6);
+    }
+    // A list of the deuterated companion, {4111, 4700} with one band in 90 cm⁻¹.
+    let (model, table) = (example(), table_of_example());
+    for (quanta, ratio, place, factor) in [
+        (ABC, (0.735_654, 0.005_560), (4160.122, 33.655), 0.557_400),
+        (ADD, (0.839_818, 0.005_098), (4749.172, 31.228), 0.532_973),
+    ] {
+        let found = level_ratio(&table, &model.nu, &Candidate::plain(&model, level(quanta)), "H=D");
+        assert!((found.0 - ratio.0).abs() < PRINTED && (found.1 - ratio.1).abs() < PRINTED, "{found:?}");
+        let there = exchanged_place(5655.0, found);
+        // Places are printed to three decimals.
+        assert!((there.0 - place.0).abs() < 5.1e-4 && (there.1 - place.1).abs() < 5.1e-4, "{there:?}");
+        assert!((list_factor(0.7, 1.0 / 90.0, &[4111.0, 4700.0], there) - factor).abs() < PRINTED);
+    }
+}
+
+fn table_of_example() -> ModeTable {
+    let mut table = ModeTable::default();
+    let motions = [Motion::OhStretch, Motion::HohBend, Motion::Libration, Motion::XoStretch];
+    for ((id, motion), nu) in ["a", "b", "c", "d"].into_iter().zip(motions).zip(example().nu) {
+        let moiety = table.intern_moiety(if id == "d" { "ClO4" } else { "H2O" });
+        table.modes.push(Mode {
+            id: id.to_owned(),
+            moiety,
+            motion,
+            wavenumber: Wavenumber::from_inverse_cm(nu).unwrap(),
+            sigma: 5.0,
+            sigma_given: true,
+            degeneracy: 1,
+            species: None,
+            ir: None,
+            raman: None,
+            fwhm: None,
+            source: "invented".to_owned(),
+        });
+    }
+    table.settle_moieties();
+    table
+}
+
+#[test]
+fn a_level_that_was_not_listed_has_the_worked_factor() {
+    // p = 0.8, hidden with probability 0.1: 1 − q.
+    assert!((1.0 - noticed(0.8, 0.1) - 0.28).abs() < 1e-12);
+    // However sure a level is, one missing band counts no more than 50 to 1.
+    assert!((1.0 - noticed(1.0, 0.0) - 0.02).abs() < 1e-12);
 }

@@ -7,7 +7,7 @@ use serde::Serialize;
 use super::candidate::{Candidate, Family};
 use super::chance::{ExpectedMatches, expected_matches};
 use super::kernel::{log_normal, log_sum};
-use super::offers::{MOST_NOTICED, Weighed, Weighing, parameter_label, weigh};
+use super::offers::{Weighed, Weighing, noticed, parameter_label, weigh};
 use super::problem::Shares;
 use super::sampler::{Effort, Population, sample};
 use super::witness::{Factor, Witness};
@@ -404,9 +404,9 @@ fn missing(
             continue;
         }
         let seen: f64 = weighed.visibilities.iter().zip(&population.models).map(|(v, p)| p * v.seen(level.steps)).sum();
-        let noticed = (seen * (1.0 - level.hidden)).min(MOST_NOTICED);
-        if noticed > 0.5 && assigned.get(&i).is_none_or(|p| *p < 0.5) {
-            list.push((noticed, i));
+        let expected = noticed(seen, level.hidden);
+        if expected > 0.5 && assigned.get(&i).is_none_or(|p| *p < 0.5) {
+            list.push((expected, i));
         }
     }
     list.sort_by(|a, b| b.0.total_cmp(&a.0).then(a.1.cmp(&b.1)));

@@ -185,11 +185,10 @@ impl Conditioned {
         // Forward substitution by columns: columns of L are contiguous.
         for j in 0..n {
             let column = &all[j * n..(j + 1) * n];
-            let x = covariances[j] / column[j];
+            let (head, tail) = covariances.split_at_mut(j + 1);
+            let x = head[j] / column[j];
             taken += x * x;
-            for i in j + 1..n {
-                covariances[i] -= column[i] * x;
-            }
+            tail.iter_mut().zip(&column[j + 1..]).for_each(|(c, l)| *c -= l * x);
         }
         taken
     }

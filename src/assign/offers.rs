@@ -111,7 +111,8 @@ pub fn listed_strength(band: &Band) -> Option<(f64, f64)> {
     band.strength.map(|s| (s.log10(), if matches!(s, Strength::Word(_)) { 0.3 } else { 0.15 }))
 }
 
-fn measured_range(bands: &BandList, given: Option<(f64, f64)>) -> (f64, f64) {
+/// The measured range: as given, as listed, else the bands and 100 cm⁻¹ beyond.
+pub fn measured_range(bands: &BandList, given: Option<(f64, f64)>) -> (f64, f64) {
     given.or(bands.range).unwrap_or_else(|| {
         let positions = bands.bands.iter().map(|b| b.position.inverse_cm());
         let (low, high) = positions.fold((f64::INFINITY, 0.0_f64), |(l, h), y| (l.min(y), h.max(y)));
@@ -122,12 +123,19 @@ fn measured_range(bands: &BandList, given: Option<(f64, f64)>) -> (f64, f64) {
 /// The smallest uncertainty a band is credited with, cm⁻¹: keeps G positive definite.
 pub const LEAST_SIGMA: f64 = 0.5;
 
-fn band_variance(band: &Band) -> f64 {
+/// Variance of a band's position, cm⁻².
+pub fn band_variance(band: &Band) -> f64 {
     band.sigma.max(LEAST_SIGMA).powi(2)
 }
 
 /// Cap of the probability that a level would have been noticed as missing.
 pub const MOST_NOTICED: f64 = 0.98;
+
+/// q: the probability that a level would have been noticed as missing, from those of being seen at all and of lying
+/// within the resolution of a listed band.
+pub fn noticed(seen: f64, hidden: f64) -> f64 {
+    (seen * (1.0 - hidden)).min(MOST_NOTICED)
+}
 
 /// log of f/(1 − q).
 fn log_fit(visibility: &Visibility, level: &Placed, in_range: bool, listed: Option<(f64, f64)>) -> f64 {
@@ -139,8 +147,8 @@ fn log_fit(visibility: &Visibility, level: &Placed, in_range: bool, listed: Opti
             (1.0 - visibility.lost).ln() + log_normal(strength - visibility.strength(level.steps), variance)
         }
     };
-    let noticed = if in_range { (seen * (1.0 - level.hidden)).min(MOST_NOTICED) } else { 0.0 };
-    log_seen - (1.0 - noticed).ln()
+    let missed = if in_range { noticed(seen, level.hidden) } else { 0.0 };
+    log_seen - (1.0 - missed).ln()
 }
 
 /// Weighs all candidates against all bands.
@@ -210,10 +218,7 @@ pub fn weigh(
         .map(|visibility| {
             let silence: f64 = alike
                 .iter()
-                .map(|(&(steps, hidden), n)| {
-                    let noticed = visibility.seen(steps) * (1.0 - f64::from(hidden) / 64.0);
-                    n * (1.0 - noticed.min(MOST_NOTICED)).ln()
-                })
+                .map(|(&(steps, hidden), n)| n * (1.0 - noticed(visibility.seen(steps), f64::from(hidden) / 64.0)).ln())
                 .sum();
             visibility.model.weight.ln() + silence
         })
@@ -252,7 +257,7 @@ pub fn weigh(
                 if p < 1.0e-9 {
                     continue;
                 }
-                let noticed = if in_range(level) { (p * (1.0 - level.hidden)).min(MOST_NOTICED) } else { 0.0 };
+                let missed = if in_range(level) { noticed(p, level.hidden) } else { 0.0 };
                 let f = match strengths[b] {
                     None => p,
                     Some((strength, sigma)) => *dense.entry(level.steps).or_insert_with(|| {
@@ -263,7 +268,7 @@ pub fn weigh(
                         visibilities.iter().zip(&mixed).map(|(v, w)| w * density(v)).sum()
                     }),
                 };
-                list.push((f / (1.0 - noticed) * place(difference, level, s2), i));
+                list.push((f / (1.0 - missed) * place(difference, level, s2), i));
             }
             list.sort_by(|a, b| b.0.total_cmp(&a.0).then(a.1.cmp(&b.1)));
             let best = list.first().map_or(0.0, |l| l.0);

@@ -104,6 +104,18 @@ impl Steps {
 impl StrengthPrior {
     /// The steps of a candidate.
     pub fn steps(&self, table: &ModeTable, candidate: &Candidate) -> Steps {
+        self.tilted(self.untilted(table, candidate), candidate.mean)
+    }
+
+    /// Steps with the tilt at `position` (cm⁻¹) added.
+    pub fn tilted(&self, steps: Steps, position: f64) -> Steps {
+        let tilt = self.tilt * (position - 4_000.0) / 4_000.0;
+        let fixed = f64::from(steps.fixed) + tilt / Steps::UNIT;
+        Steps { fixed: fixed.round().clamp(-32_000.0, 32_000.0) as i16, ..steps }
+    }
+
+    /// The steps of a candidate before the detection limit's dependence on position.
+    pub fn untilted(&self, table: &ModeTable, candidate: &Candidate) -> Steps {
         let mut hydrogenic = false;
         let (mut fixed, mut order) = (0.0, 0_u32);
         let mut moieties = [usize::MAX; 8];
@@ -134,7 +146,6 @@ impl StrengthPrior {
         if candidate.forbidden {
             fixed -= self.forbidden;
         }
-        fixed += self.tilt * (candidate.mean - 4_000.0) / 4_000.0;
         Steps {
             fixed: (fixed / Steps::UNIT).round().clamp(-32_000.0, 32_000.0) as i16,
             order: u8::try_from(order.saturating_sub(1)).unwrap_or(u8::MAX),

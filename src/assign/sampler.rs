@@ -63,9 +63,9 @@ const UNLISTED: Choice = u16::MAX - 2;
 /// Offers beyond this many per band are not used.
 pub const MOST_OFFERS: usize = 60_000;
 
-/// Candidates whose greatest possible weight is this many nats below the best are passed over: 250 of them together
-/// weigh less than 4e-6.
-const NEGLIGIBLE: f64 = 18.0;
+/// Candidates whose greatest possible weight is this many nats below the best are passed over: a hundred of them together
+/// weigh less than 6e-4 of the best.
+const NEGLIGIBLE: f64 = 12.0;
 
 #[derive(Clone)]
 struct Member {
@@ -143,16 +143,29 @@ impl Member {
             entries.push((UNLISTED, 0, target.unlisted));
             top = top.max(target.unlisted);
         }
-        let widest = problem.tails.iter().map(|t| t.0 * t.0).fold(1.0, f64::max) * target.variance;
-        let narrowest = problem.tails.iter().map(|t| t.0 * t.0).fold(1.0, f64::min) * target.variance;
-        for (number, offer) in target.offers.iter().enumerate() {
+        // Per tail: its variance, and the most that a peak of that width can weigh.
+        let tails: Vec<(f64, f64)> =
+            problem.tails.iter().map(|&(tail, weight)| (tail * tail * target.variance, weight.ln())).collect();
+        // The choice of before comes first: it is mostly a good one, and lets hopeless ones be passed over early.
+        let before = usize::from(self.choice[band]);
+        let first = (before < target.offers.len()).then_some(before);
+        let rest = (0..target.offers.len()).filter(|&i| Some(i) != first);
+        for number in first.into_iter().chain(rest) {
+            let offer = &target.offers[number];
+            let fit = offer.fit[model];
+            // No narrower than the band itself, no wider than unconditioned.
+            if fit - 0.5 * (std::f64::consts::TAU * (offer.private + tails[0].0)).ln() < top - NEGLIGIBLE {
+                continue;
+            }
             let shift: f64 = offer.slopes.pairs().iter().map(|&(p, a)| scratch.shift[p as usize] * a).sum();
             let difference = offer.residual - shift;
-            let fit = offer.fit[model];
-            let room = kappa_squared * offer.shared + offer.private + widest;
-            let least = offer.private + narrowest;
-            let bound = fit - 0.5 * (difference * difference / room + (std::f64::consts::TAU * least).ln());
-            if bound < top - NEGLIGIBLE {
+            let room = kappa_squared * offer.shared + offer.private;
+            let possible = tails.iter().any(|&(noise, log_weight)| {
+                let far = difference * difference / (room + noise);
+                let peak = log_weight - 0.5 * (std::f64::consts::TAU * (offer.private + noise)).ln();
+                fit + peak - 0.5 * far >= top - NEGLIGIBLE
+            });
+            if !possible {
                 continue;
             }
             let taken_elsewhere = assigned
@@ -174,10 +187,12 @@ impl Member {
             }
             let taken = conditioned.variance_taken(&mut scratch.covariances);
             let variance = (kappa_squared * offer.shared - taken).max(0.0) + offer.private;
-            for (t, &(tail, weight)) in problem.tails.iter().enumerate() {
-                let log = fit + weight.ln() + log_normal(difference, variance + tail * tail * target.variance);
-                top = top.max(log);
-                entries.push((number as Choice, t as u8, log));
+            for (t, &(noise, log_weight)) in tails.iter().enumerate() {
+                let log = fit + log_weight + log_normal(difference, variance + noise);
+                if log >= top - NEGLIGIBLE {
+                    top = top.max(log);
+                    entries.push((number as Choice, t as u8, log));
+                }
             }
         }
         for &b in &assigned {
