@@ -448,6 +448,9 @@ fn files_beyond_all_measure_are_refused_with_a_reason() {
     let bytes = vec![b'1'; (128 << 20) + 1];
     let complaint = read_bytes("s.csv", bytes, &SpectrumOptions::default()).unwrap_err().to_string();
     assert!(complaint.contains("at most 128 MiB"), "{complaint}");
+    // Lines with tens of thousands of cells are no spectrum, and are told so soon.
+    let wide = format!("{}\n", "1,".repeat(49_000)).repeat(20);
+    assert!(read(&wide, &SpectrumOptions::default()).is_err());
     // A repetition that stands for more points than there can be.
     let bomb = jcamp("##XYDATA=(X++(Y..Y))\n4000 1Z99999999999\n4000 1Z999999\n");
     let complaint = read(&bomb, &SpectrumOptions::default()).unwrap_err().to_string();
@@ -514,6 +517,29 @@ fn every_form_of_the_standard_is_one_spectrum() {
             assert!((read.value.wavenumbers[k] - 4000.0 - 2.0 * k as f64).abs() < 1e-9, "{data}");
         }
     }
+}
+
+#[test]
+fn a_spectrum_as_jcamp_gives_the_bands_of_its_columns() {
+    let file = "examples/spectra/epsomite_beckman.csv";
+    let columns = std::fs::read_to_string(file).unwrap();
+    let points: String =
+        columns.lines().filter(|l| l.starts_with(|c: char| c.is_ascii_digit())).map(|l| format!("{l}\n")).collect();
+    let text = format!(
+        "##TITLE=Epsomite\n##JCAMP-DX=4.24\n##DATA TYPE=INFRARED SPECTRUM\n##XUNITS=MICROMETERS\n##YUNITS=REFLECTANCE\n\
+         ##XFACTOR=1\n##YFACTOR=1\n##NPOINTS={}\n##XYPOINTS=(XY..XY)\n{points}##END=\n",
+        points.lines().count()
+    );
+    let read = super_read(&text).unwrap();
+    assert!(read.notes.iter().all(|n| n.0.contains("air or in vacuum")), "{:?}", read.notes);
+    let (a, b) = (spectrum_of(file), read.value);
+    assert_eq!((&a.wavenumbers, &a.ordinates), (&b.wavenumbers, &b.ordinates));
+    let positions = |s: &Spectrum| {
+        let picked = pick(s, &PickOptions::default()).value;
+        picked.bands.iter().map(|b| b.band.position.inverse_cm()).collect::<Vec<_>>()
+    };
+    assert!(positions(&a).len() >= 5);
+    assert_eq!(positions(&a), positions(&b));
 }
 
 #[test]
@@ -627,7 +653,7 @@ fn difdup(first_x: f64, step: f64, ordinates: &[i64], width: usize) -> String {
 
 proptest::proptest! {
     #![proptest_config(proptest::prelude::ProptestConfig {
-        cases: 128,
+        cases: 96,
         failure_persistence: None,
         ..Default::default()
     })]
@@ -848,6 +874,8 @@ fn names_of_columns_with_blanks_still_say_the_unit() {
     let text = "Wavelength (nm)  Reflectance factor\n1250 0.6\n1600 0.4\n2000 0.25\n";
     let spectrum = super_read(text).unwrap().value;
     assert_eq!((spectrum.axis, spectrum.ordinate), (Some(AxisUnit::Nanometre), Ordinate::Reflectance));
+    let spectrum = super_read("position,transmittance\nnm,%\n1250,60\n1600,40\n2000,25\n").unwrap().value;
+    assert_eq!((spectrum.axis, spectrum.ordinate), (Some(AxisUnit::Nanometre), Ordinate::Transmittance));
     let read = super_read("wavelength_nm,sample a\n1250,0.6\n1600,0.4\n2000,0.25\n").unwrap();
     assert_eq!(read.value.ordinate, Ordinate::Reflectance, "a letter in a name is no ordinate");
     assert!(read.notes.iter().any(|n| n.0.contains("taken as reflectance")));

@@ -208,11 +208,11 @@ pub(super) fn medium_of(text: &str) -> Option<Medium> {
     }
 }
 
-/// The axis unit that the values leave possible: wavelengths in µm stay below 100 and never reach it in nm or cm⁻¹ at
-/// both ends. Nanometres and wavenumbers overlap, so they are asked about.
+/// The axis unit that the values leave possible: an axis that begins below 5 and ends below 1000 is one of micrometres.
+/// Nanometres and wavenumbers overlap, so they are asked about.
 fn axis_of_values(name: &str, points: &[RawPoint], notes: &mut Vec<Note>) -> Result<AxisUnit, Complaints> {
     let (low, high) = points.iter().map(|p| p.x).minmax().into_option().unwrap_or((0.0, 0.0));
-    if low < 100.0 && high < 1000.0 && low > 0.05 {
+    if low < 5.0 && high < 1000.0 && low > 0.05 {
         notes.push(Note::new(format!(
             "{name}: the axis has no unit; its values, {low} to {high}, are taken as wavelengths in um (--axis says it)"
         )));

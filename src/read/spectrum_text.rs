@@ -36,11 +36,10 @@ const JUDGED: usize = 5_000;
 /// Cells looked at in one line; more are data of another kind.
 const MOST_CELLS: usize = 4_096;
 
-/// One cell: its text without blanks and quotes, its first character's column from one, its width.
+/// One cell: its text without blanks and quotes, and where it begins in its line, in bytes.
 struct Piece<'a> {
     text: &'a str,
-    column: usize,
-    width: usize,
+    offset: usize,
 }
 
 impl Layout {
@@ -48,11 +47,8 @@ impl Layout {
         let mut pieces = Vec::new();
         let mut push = |start: usize, end: usize| {
             let raw = &line[start..end];
-            let text = raw.trim();
             let offset = start + raw.len() - raw.trim_start().len();
-            let column = 1 + line[..offset].chars().count();
-            let width = text.chars().count().max(1);
-            pieces.push(Piece { text: text.trim_matches('"'), column, width });
+            pieces.push(Piece { text: raw.trim().trim_matches('"'), offset });
         };
         match self.separator {
             Some(separator) => {
@@ -167,9 +163,10 @@ pub(super) fn read(name: &str, text: &str, options: &SpectrumOptions) -> Result<
         }
         let pieces = layout.cut(line);
         let complain = |piece: Option<&Piece<'_>>, expected: &str| {
-            let (column, width, found) =
-                piece.map_or((line.chars().count() + 1, 1, ""), |p| (p.column, p.width, p.text));
-            let complaint = Complaint::at(name, number, column, width, line, expected, found);
+            let offset = piece.map_or(line.len(), |p| p.offset);
+            let column = 1 + line.get(..offset).map_or(0, |t| t.chars().count());
+            let found = piece.map_or("", |p| p.text);
+            let complaint = Complaint::at(name, number, column, found.chars().count().max(1), line, expected, found);
             match found.contains(',') && layout.separator == Some(',') {
                 true => complaint.hint("decimal commas need another separator than the comma"),
                 false if layout.decimal_comma => complaint.hint("the other lines have decimal commas"),
@@ -233,7 +230,15 @@ fn read_head(text: &str, first: usize, layout: Layout, raw: &mut RawSpectrum) ->
                 _ => {}
             },
             None if !line.trim_start().starts_with(['#', '%', '!', '/', '*', '$']) || axis_of(plain).is_some() => {
+                let names = std::mem::take(&mut header);
                 header = layout.cut(plain).into_iter().map(|p| p.text.to_owned()).collect();
+                // A row of units below the row of names: both describe the columns.
+                if names.len() == header.len()
+                    && names.iter().any(|n| ordinate_of(n).is_some())
+                    && !header.iter().any(|n| ordinate_of(n).is_some())
+                {
+                    header = names.iter().zip(&header).map(|(name, unit)| format!("{name} {unit}")).collect();
+                }
                 // A header may be separated otherwise than the numbers below it.
                 if header.len() < 2 {
                     header = LAYOUTS
