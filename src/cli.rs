@@ -21,6 +21,9 @@ pub mod assign;
 /// `check`: faults and doubts of tables.
 pub mod check;
 
+/// `symmetry`: selection rules.
+pub mod symmetry;
+
 /// `tables`: what is bundled.
 pub mod tables;
 
@@ -98,6 +101,8 @@ pub enum Command {
     Check(check::Check),
     /// What is bundled, with sources.
     Tables(tables::Tables),
+    /// Selection rules: groups, species, products, powers, site and factor groups.
+    Symmetry(symmetry::Symmetry),
     /// Shell completions.
     Completions(manual::Completions),
     /// The manual page.
@@ -133,6 +138,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> Outcome {
         Command::Assign(command) => command.run(),
         Command::Check(command) => command.run(),
         Command::Tables(command) => command.run(),
+        Command::Symmetry(command) => command.run(),
         Command::Completions(command) => command.run(),
         Command::Manual(command) => command.run(),
     };

@@ -35,6 +35,9 @@ pub struct Assign {
     /// Rank every band by itself instead of all jointly.
     #[arg(long)]
     pub separately: bool,
+    /// Decades of strength that a level forbidden by symmetry loses; `exclude` leaves such levels out.
+    #[arg(long, default_value = "1", value_name = "DECADES|exclude")]
+    pub forbidden_penalty: String,
     /// Members of the sampler's population.
     #[arg(long, default_value_t = 256, value_name = "N", value_parser = clap::value_parser!(u32).range(8..=100_000))]
     pub particles: u32,
@@ -72,7 +75,16 @@ impl Assign {
             budget: BUDGET,
             hot: None,
         };
-        let predicted = predict(&table, &model.value, &request).map_err(|e| Failure::Usage(e.to_string()))?;
+        let penalty = penalty(&self.forbidden_penalty)?;
+        let mut predicted = predict(&table, &model.value, &request).map_err(|e| Failure::Usage(e.to_string()))?;
+        match penalty {
+            None => predicted.value.retain(|p| p.infrared != Activity::Forbidden),
+            Some(decades) => {
+                for p in predicted.value.iter_mut().filter(|p| p.infrared == Activity::Forbidden) {
+                    p.strength.log10 -= FORBIDDEN_STEP + decades;
+                }
+            }
+        }
         let report = if self.separately {
             let assume = Assumptions { listed: self.top, ..Assumptions::default() };
             let ranked = rank(&predicted.value, &bands, &assume);
@@ -87,9 +99,11 @@ impl Assign {
                 &notes,
             )
         } else {
-            let candidates: Vec<Candidate> = predicted.value.iter().map(candidate).collect();
+            let candidates: Vec<Candidate> =
+                predicted.value.iter().map(|p| candidate(p, penalty.unwrap_or(0.0))).collect();
             let effort = Effort { particles: self.particles as usize, seed: self.seed, ..Effort::default() };
-            let options = JointOptions { effort, ..JointOptions::default() };
+            let mut options = JointOptions { effort, ..JointOptions::default() };
+            options.weighing.strength.forbidden = penalty.unwrap_or(0.0);
             let answer = joint::assign(&model.value, &table, &candidates, &bands, &[], &options);
             let input = records::AssignInput {
                 table: &table,
@@ -123,14 +137,27 @@ impl Assign {
     }
 }
 
-/// A predicted transition as the ranking sees it. The penalty of a selection rule is the ranking's own.
-fn candidate(predicted: &Predicted) -> Candidate {
+/// `--forbidden-penalty`: decades, or `None` to leave forbidden levels out.
+fn penalty(text: &str) -> Result<Option<f64>, Failure> {
+    if text == "exclude" {
+        return Ok(None);
+    }
+    match text.parse::<f64>() {
+        Ok(decades) if (0.0..=20.0).contains(&decades) => Ok(Some(decades)),
+        _ => Err(Failure::Usage(format!(
+            "--forbidden-penalty: expected decades from 0 to 20 or `exclude`, found `{text}`"
+        ))),
+    }
+}
+
+/// A predicted transition as the ranking sees it. The ranking takes off the penalty of a selection rule by itself.
+fn candidate(predicted: &Predicted, penalty: f64) -> Candidate {
     let forbidden = predicted.infrared == Activity::Forbidden;
     Candidate {
         level: predicted.level.clone(),
         mean: predicted.position,
         forbidden,
-        strength: Some(if forbidden { predicted.strength.log10 - FORBIDDEN_STEP } else { predicted.strength.log10 }),
+        strength: Some(if forbidden { predicted.strength.log10 + penalty } else { predicted.strength.log10 }),
         mixed: None,
     }
 }

@@ -194,7 +194,11 @@ fn one_band(band: &BandRecord) -> String {
         .families
         .iter()
         .take(FAMILIES)
-        .map(|f| vec![String::new(), probability(f.probability), family_text(f)])
+        .map(|f| {
+            let split =
+                if f.carriers > 1 { format!(", {} carriers: may split on cooling", f.carriers) } else { String::new() };
+            vec![String::new(), probability(f.probability), family_text(f) + &split]
+        })
         .chain([vec![
             String::new(),
             probability(band.other_origin.probability),

@@ -199,7 +199,12 @@ pub fn assign_report(
         }
         let mut families: Vec<FamilyRecord> = families
             .into_iter()
-            .map(|((family, moieties), probability)| FamilyRecord { family, moieties, probability })
+            .map(|((family, moieties), probability)| FamilyRecord {
+                carriers: carriers(table, predicted, &family, &moieties),
+                family,
+                moieties,
+                probability,
+            })
             .collect();
         families.sort_by(|a, b| {
             b.probability
@@ -313,7 +318,12 @@ pub fn joint_report(input: &AssignInput<'_>, answer: &JointAnswer, notes: &[Note
             .iter()
             .map(|f| {
                 let (family, moieties) = grouped(&f.family, &f.moieties);
-                FamilyRecord { family, moieties, probability: f.probability }
+                FamilyRecord {
+                    carriers: carriers(table, found.candidates.iter().map(|c| &c.level), &family, &moieties),
+                    family,
+                    moieties,
+                    probability: f.probability,
+                }
             })
             .collect();
         // Families too improbable to be told one by one are levels that are not listed.
@@ -407,4 +417,24 @@ fn verdict_sentence(leading: Option<&FamilyRecord>, expected: f64, weighted: f64
             f.probability
         ),
     }
+}
+
+/// How many different sets of moieties carry a family among the levels offered for a band.
+fn carriers<'l>(
+    table: &ModeTable,
+    levels: impl Iterator<Item = &'l Level>,
+    motions: &[String],
+    formulas: &[String],
+) -> usize {
+    levels
+        .filter(|level| {
+            let (m, f) = family_key(table, level);
+            m == motions && f == formulas
+        })
+        .map(|level| {
+            let moieties = level.excitations().iter().map(|e| table.modes[usize::from(e.mode)].moiety);
+            moieties.sorted().dedup().collect::<Vec<_>>()
+        })
+        .unique()
+        .count()
 }

@@ -177,6 +177,9 @@ pub struct FamilyRecord {
     pub moieties: Vec<String>,
     /// Probability, summed over its levels.
     pub probability: f64,
+    /// How many different sets of moieties carry it: on cooling the band can resolve into as many components.
+    #[serde(default)]
+    pub carriers: usize,
 }
 
 /// Probability that a band is none of the listed candidates.
