@@ -15,6 +15,12 @@ pub mod table_faults;
 /// Two OH bonds of one water.
 pub mod local_pair;
 
+/// A force field becomes anharmonic constants.
+pub mod perturbation;
+
+/// Strengths of two-quanta transitions from a force field and dipole derivatives.
+pub mod transition_moment;
+
 /// Resonances and polyads.
 pub mod resonance;
 

@@ -30,4 +30,7 @@ mod spectrum_text;
 /// Spectra as JCAMP-DX.
 mod jcamp_dx;
 
+/// Cubic and quartic force fields as JSON.
+pub mod force_field;
+
 pub use error::{Complaint, Complaints, Location};
