@@ -21,6 +21,12 @@ pub mod perturbation;
 /// Strengths of two-quanta transitions from a force field and dipole derivatives.
 pub mod transition_moment;
 
+/// The mode table of an isotopologue.
+pub mod isotopes;
+
+/// A table at another temperature; thermal populations.
+pub mod temperature;
+
 /// Resonances and polyads.
 pub mod resonance;
 
