@@ -200,7 +200,7 @@ pub fn assign_report(
         let mut families: Vec<FamilyRecord> = families
             .into_iter()
             .map(|((family, moieties), probability)| FamilyRecord {
-                carriers: carriers(table, predicted, &family, &moieties),
+                carriers: carriers(table, predicted.iter().map(|p| &p.level), &family, &moieties),
                 family,
                 moieties,
                 probability,
