@@ -200,7 +200,12 @@ pub fn assign_report(
         let mut families: Vec<FamilyRecord> = families
             .into_iter()
             .map(|((family, moieties), probability)| FamilyRecord {
-                carriers: carriers(table, predicted.iter().map(|p| &p.level), &family, &moieties),
+                carriers: carriers(
+                    table,
+                    answer.offers.iter().take(200).map(|o| &predicted[o.level].level),
+                    &family,
+                    &moieties,
+                ),
                 family,
                 moieties,
                 probability,
