@@ -20,6 +20,8 @@ pub mod offers;
 
 pub mod chance;
 
+pub mod verdict;
+
 pub mod joint;
 
 pub mod simulation;

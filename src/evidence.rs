@@ -3,3 +3,5 @@
 pub mod companion;
 
 pub mod splitting;
+
+pub mod advice;

@@ -8,6 +8,7 @@ use bandwright::assign::kernel::{Conditioned, ParameterNumbers, Slopes, log_norm
 use bandwright::assign::offers::noticed;
 use bandwright::assign::problem::{Offer, Problem, Shares, Target};
 use bandwright::assign::sampler::{Effort, sample};
+use bandwright::evidence::advice::{Law, expected_information};
 use bandwright::evidence::companion::{exchanged_place, found, level_ratio, list_factor};
 use bandwright::level::Level;
 use bandwright::mode::{Mode, ModeTable, Motion};
@@ -491,4 +492,18 @@ fn a_level_that_was_not_listed_has_the_worked_factor() {
     assert!((1.0 - noticed(0.8, 0.1) - 0.28).abs() < 1e-12);
     // However sure a level is, one missing band counts no more than 50 to 1.
     assert!((1.0 - noticed(1.0, 0.0) - 0.02).abs() < 1e-12);
+}
+
+#[test]
+fn expected_information_has_the_worked_bits() {
+    let weights = [0.6, 0.3, 0.1];
+    let presence = |found: f64| Law { found, mean: 0.0, sd: 0.0 };
+    let bits = expected_information(&weights, &[presence(0.15), presence(0.8), presence(0.5)]);
+    assert!((bits - 0.275_559).abs() < PRINTED, "{bits}");
+    let prior: f64 = weights.iter().map(|w: &f64| -w * w.log2()).sum();
+    assert!((prior - 1.295_462).abs() < PRINTED);
+    let law = |found, mean, sd| Law { found, mean, sd };
+    let bits = expected_information(&weights, &[law(0.7, -1493.0, 40.0), law(0.7, -1150.0, 25.0), law(0.5, 0.0, 12.0)]);
+    // 400 points over ± 5 standard deviations leave out 6e-7 of each peak.
+    assert!((bits - 0.847_438).abs() < 3e-6, "{bits}");
 }
