@@ -192,4 +192,21 @@ impl Conditioned {
         }
         taken
     }
+
+    /// L⁻¹ A in place, for a matrix A with one row an assigned band and `columns` columns, by rows: the squared norm of a
+    /// combination of its columns is what [`Self::variance_taken`] gives for that combination.
+    pub fn project(&self, matrix: &mut [f64], columns: usize) {
+        let Some(factor) = &self.factor else { return };
+        let l = factor.l_dirty();
+        for row in 0..self.residuals.len() {
+            let (above, from) = matrix.split_at_mut(row * columns);
+            let own = &mut from[..columns];
+            for j in 0..row {
+                let weight = l[(row, j)];
+                own.iter_mut().zip(&above[j * columns..(j + 1) * columns]).for_each(|(o, a)| *o -= weight * a);
+            }
+            let inverse = 1.0 / l[(row, row)];
+            own.iter_mut().for_each(|o| *o *= inverse);
+        }
+    }
 }

@@ -63,9 +63,9 @@ const UNLISTED: Choice = u16::MAX - 2;
 /// Offers beyond this many per band are not used.
 pub const MOST_OFFERS: usize = 60_000;
 
-/// Candidates whose greatest possible weight is this many nats below the best are passed over: a hundred of them together
-/// weigh less than 6e-4 of the best.
-const NEGLIGIBLE: f64 = 12.0;
+/// Candidates whose greatest possible weight (unconditioned variance, narrowest peak) is this many nats below the best are
+/// passed over: a hundred of them together weigh less than 0.5 % of the best even if all of them met that bound.
+const NEGLIGIBLE: f64 = 10.0;
 
 #[derive(Clone)]
 struct Member {
@@ -78,18 +78,52 @@ struct Member {
     log_weight: f64,
 }
 
-struct Scratch {
+/// Which parameters the offers of each band depend on.
+type Relevant = Vec<Vec<bool>>;
+
+fn relevant(problem: &Problem) -> Relevant {
+    let of = |target: &super::problem::Target| {
+        let mut list = vec![false; problem.parameters];
+        for offer in &target.offers {
+            offer.slopes.pairs().iter().for_each(|&(p, _)| list[p as usize] = true);
+        }
+        list
+    };
+    problem.targets.iter().map(of).collect()
+}
+
+struct Scratch<'a> {
+    relevant: &'a Relevant,
     shift: Vec<f64>,
-    row: Vec<f64>,
+    /// Column of each parameter in the projection, [`NOWHERE`] for those no assigned band depends on.
+    slot: Vec<u32>,
+    columns: Vec<u32>,
+    rows: Vec<f64>,
+    projection: Vec<f64>,
+    combination: Vec<f64>,
     entries: Vec<(Choice, u8, f64)>,
     covariances: Vec<f64>,
     assigned: Vec<usize>,
+    used: Vec<usize>,
 }
 
-impl Scratch {
-    fn new(problem: &Problem) -> Self {
-        let zeros = || vec![0.0; problem.parameters];
-        Self { shift: zeros(), row: zeros(), entries: Vec::new(), covariances: Vec::new(), assigned: Vec::new() }
+const NOWHERE: u32 = u32::MAX;
+
+impl<'a> Scratch<'a> {
+    fn new(problem: &Problem, relevant: &'a Relevant) -> Self {
+        Self {
+            relevant,
+            shift: vec![0.0; problem.parameters],
+            slot: vec![NOWHERE; problem.parameters],
+            columns: Vec::new(),
+            rows: Vec::new(),
+            projection: Vec::new(),
+            combination: Vec::new(),
+            entries: Vec::new(),
+            covariances: Vec::new(),
+            assigned: Vec::new(),
+            used: Vec::new(),
+        }
     }
 }
 
@@ -120,9 +154,50 @@ impl Member {
         })
     }
 
+    /// Fills `scratch.projection` with L⁻¹ A, one column of length `assigned.len()` for every parameter that both an
+    /// assigned band and an offer of `band` depend on.
+    fn project(
+        &self,
+        problem: &Problem,
+        band: usize,
+        assigned: &[usize],
+        conditioned: &Conditioned,
+        kappa_squared: f64,
+        scratch: &mut Scratch<'_>,
+    ) {
+        let wanted = &scratch.relevant[band];
+        for &b in assigned {
+            for &(p, _) in self.slopes(problem, b).pairs() {
+                if wanted[p as usize] && scratch.slot[p as usize] == NOWHERE {
+                    scratch.slot[p as usize] = scratch.columns.len() as u32;
+                    scratch.columns.push(p);
+                }
+            }
+        }
+        let (n, columns) = (assigned.len(), scratch.columns.len());
+        scratch.rows.clear();
+        scratch.rows.resize(n * columns, 0.0);
+        for (row, &b) in assigned.iter().enumerate() {
+            for &(p, a) in self.slopes(problem, b).pairs() {
+                let slot = scratch.slot[p as usize];
+                if slot != NOWHERE {
+                    scratch.rows[row * columns + slot as usize] = kappa_squared * a;
+                }
+            }
+        }
+        conditioned.project(&mut scratch.rows, columns);
+        scratch.projection.clear();
+        scratch.projection.resize(n * columns, 0.0);
+        for row in 0..n {
+            for column in 0..columns {
+                scratch.projection[column * n + row] = scratch.rows[row * columns + column];
+            }
+        }
+    }
+
     /// Fills `scratch.entries` with all choices for `band` and the log of their weights given the rest; returns the log
     /// of the sum and leaves probabilities in place of the logs.
-    fn weigh(&self, problem: &Problem, band: usize, scratch: &mut Scratch) -> f64 {
+    fn weigh(&self, problem: &Problem, band: usize, scratch: &mut Scratch<'_>) -> f64 {
         let target = &problem.targets[band];
         let kappa_squared = problem.inflations[usize::from(self.inflation)].0.powi(2);
         let model = usize::from(self.model);
@@ -134,6 +209,10 @@ impl Member {
                 scratch.shift[p as usize] += kappa_squared * w * a;
             }
         }
+        self.project(problem, band, &assigned, &conditioned, kappa_squared, scratch);
+        let n = assigned.len();
+        scratch.used.clear();
+        scratch.used.extend(assigned.iter().map(|&b| problem.targets[b].offers[usize::from(self.choice[b])].candidate));
         let entries = &mut scratch.entries;
         entries.clear();
         let foreign = (0..self.choice.len()).filter(|&b| b != band && self.choice[b] == FOREIGN).count();
@@ -143,9 +222,15 @@ impl Member {
             entries.push((UNLISTED, 0, target.unlisted));
             top = top.max(target.unlisted);
         }
-        // Per tail: its variance, and the most that a peak of that width can weigh.
-        let tails: Vec<(f64, f64)> =
-            problem.tails.iter().map(|&(tail, weight)| (tail * tail * target.variance, weight.ln())).collect();
+        // Per tail: its variance, the log of its prior weight, and the highest peak it allows.
+        let tails: Vec<(f64, f64, f64)> = problem
+            .tails
+            .iter()
+            .map(|&(tail, weight)| {
+                let noise = tail * tail * target.variance;
+                (noise, weight.ln(), weight.ln() - 0.5 * (std::f64::consts::TAU * noise).ln())
+            })
+            .collect();
         // The choice of before comes first: it is mostly a good one, and lets hopeless ones be passed over early.
         let before = usize::from(self.choice[band]);
         let first = (before < target.offers.len()).then_some(before);
@@ -153,41 +238,37 @@ impl Member {
         for number in first.into_iter().chain(rest) {
             let offer = &target.offers[number];
             let fit = offer.fit[model];
-            // No narrower than the band itself, no wider than unconditioned.
-            if fit - 0.5 * (std::f64::consts::TAU * (offer.private + tails[0].0)).ln() < top - NEGLIGIBLE {
+            if fit + tails[0].2 < top - NEGLIGIBLE {
                 continue;
             }
             let shift: f64 = offer.slopes.pairs().iter().map(|&(p, a)| scratch.shift[p as usize] * a).sum();
             let difference = offer.residual - shift;
             let room = kappa_squared * offer.shared + offer.private;
-            let possible = tails.iter().any(|&(noise, log_weight)| {
-                let far = difference * difference / (room + noise);
-                let peak = log_weight - 0.5 * (std::f64::consts::TAU * (offer.private + noise)).ln();
-                fit + peak - 0.5 * far >= top - NEGLIGIBLE
-            });
+            // No narrower than the band itself, no wider than unconditioned.
+            let square = difference * difference;
+            let possible =
+                tails.iter().any(|&(noise, _, peak)| fit + peak - 0.5 * square / (room + noise) >= top - NEGLIGIBLE);
             if !possible {
                 continue;
             }
-            let taken_elsewhere = assigned
-                .iter()
-                .any(|&b| problem.targets[b].offers[usize::from(self.choice[b])].candidate == offer.candidate);
-            if taken_elsewhere {
+            if scratch.used.contains(&offer.candidate) {
                 continue;
             }
+            scratch.combination.clear();
+            scratch.combination.resize(n, 0.0);
             for &(p, a) in offer.slopes.pairs() {
-                scratch.row[p as usize] = a * kappa_squared;
+                let slot = scratch.slot[p as usize];
+                if slot != NOWHERE {
+                    let column = &scratch.projection[slot as usize * n..(slot as usize + 1) * n];
+                    scratch.combination.iter_mut().zip(column).for_each(|(c, w)| *c += a * w);
+                }
             }
-            scratch.covariances.clear();
-            for &b in &assigned {
-                let pairs = self.slopes(problem, b).pairs();
-                scratch.covariances.push(pairs.iter().map(|&(p, a)| scratch.row[p as usize] * a).sum());
-            }
-            for &(p, _) in offer.slopes.pairs() {
-                scratch.row[p as usize] = 0.0;
-            }
-            let taken = conditioned.variance_taken(&mut scratch.covariances);
+            let taken: f64 = scratch.combination.iter().map(|c| c * c).sum();
             let variance = (kappa_squared * offer.shared - taken).max(0.0) + offer.private;
-            for (t, &(noise, log_weight)) in tails.iter().enumerate() {
+            for (t, &(noise, log_weight, peak)) in tails.iter().enumerate() {
+                if fit + peak < top - NEGLIGIBLE {
+                    continue;
+                }
                 let log = fit + log_weight + log_normal(difference, variance + noise);
                 if log >= top - NEGLIGIBLE {
                     top = top.max(log);
@@ -200,6 +281,9 @@ impl Member {
                 scratch.shift[p as usize] = 0.0;
             }
         }
+        for p in scratch.columns.drain(..) {
+            scratch.slot[p as usize] = NOWHERE;
+        }
         scratch.assigned = assigned;
         let sum: f64 = scratch.entries.iter().map(|e| (e.2 - top).exp()).sum();
         let total = top + sum.ln();
@@ -210,7 +294,7 @@ impl Member {
     }
 
     /// Takes one of the weighed choices.
-    fn take(&mut self, problem: &Problem, band: usize, scratch: &Scratch, rng: &mut ChaCha8Rng) {
+    fn take(&mut self, problem: &Problem, band: usize, scratch: &Scratch<'_>, rng: &mut ChaCha8Rng) {
         let mut left: f64 = rng.random();
         let mut picked = scratch.entries[0];
         for &entry in &scratch.entries {
@@ -332,7 +416,7 @@ impl Sums {
         }
     }
 
-    fn record_parameters(&mut self, problem: &Problem, member: &Member, scratch: &mut Scratch) {
+    fn record_parameters(&mut self, problem: &Problem, member: &Member, scratch: &mut Scratch<'_>) {
         let kappa_squared = problem.inflations[usize::from(member.inflation)].0.powi(2);
         let mut assigned = Vec::new();
         member.assigned(usize::MAX, &mut assigned);
@@ -439,10 +523,11 @@ pub fn sample(problem: &Problem, effort: &Effort) -> Population {
         })
         .collect();
 
+    let relevant = relevant(problem);
     let mut log_z = log_models + problem.log_no_foreign();
     for (step, &(_, band)) in order.iter().enumerate() {
         members.par_chunks_mut(CHUNK).zip(rngs.par_chunks_mut(CHUNK)).for_each(|(members, rngs)| {
-            let mut scratch = Scratch::new(problem);
+            let mut scratch = Scratch::new(problem, &relevant);
             for (member, rng) in members.iter_mut().zip(rngs) {
                 member.log_weight += member.weigh(problem, band, &mut scratch);
                 member.take(problem, band, &scratch, rng);
@@ -463,7 +548,7 @@ pub fn sample(problem: &Problem, effort: &Effort) -> Population {
         .zip(rngs.par_chunks_mut(CHUNK))
         .map(|(members, rngs)| {
             let mut sums = Sums::new(problem);
-            let mut scratch = Scratch::new(problem);
+            let mut scratch = Scratch::new(problem, &relevant);
             let mut assigned = Vec::new();
             for (member, rng) in members.iter_mut().zip(rngs) {
                 for sweep in 0..effort.sweeps {
