@@ -2,7 +2,7 @@
 
 use serde::Serialize;
 
-/// What may be said about a band. The rule stands in `docs/verdicts.md`.
+/// What may be said about a band. The rule stands in `docs/verdicts.md`; a test of the whole list can only lower it.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Serialize)]
 pub enum Verdict {
     /// The family can be relied upon.
@@ -23,7 +23,10 @@ pub enum Verdict {
 pub const SECURE: f64 = 0.9;
 
 /// Probability of the leading family from which it leads.
-pub const LEADING: f64 = 0.5;
+pub const LEADING: f64 = 0.6;
+
+/// With this many visible levels expected by accident a family is not secure.
+pub const RIVALS: f64 = 1.5;
 
 /// p value of the list up to which it stands above chance.
 pub const ABOVE_CHANCE: f64 = 0.05;
@@ -32,15 +35,14 @@ pub const ABOVE_CHANCE: f64 = 0.05;
 pub const LIKE_CHANCE: f64 = 0.2;
 
 impl Verdict {
-    /// From the probabilities of the leading family and of other origin, and the p value of the whole list where it was
-    /// tested.
-    pub fn of(leading: f64, other: f64, list_p: Option<f64>) -> Self {
-        let p = list_p.unwrap_or(1.0);
-        if other >= leading {
+    /// From the probabilities of the leading family and of other origin, the visible levels expected by accident (the
+    /// weighted count), and the p value of the whole list where it was tested.
+    pub fn of(leading: f64, other: f64, rivals: f64, list_p: Option<f64>) -> Self {
+        if other >= leading || (leading < 0.3 && rivals >= 2.0) {
             Self::Chance
-        } else if leading >= SECURE && p <= ABOVE_CHANCE {
+        } else if leading >= SECURE && rivals < RIVALS && list_p.is_none_or(|p| p <= ABOVE_CHANCE) {
             Self::Secure
-        } else if leading >= LEADING && (list_p.is_none() || p < LIKE_CHANCE) {
+        } else if leading >= LEADING && list_p.is_none_or(|p| p < LIKE_CHANCE) {
             Self::Leading
         } else {
             Self::Open
@@ -64,11 +66,24 @@ mod tests {
 
     #[test]
     fn a_sure_family_is_secure_only_when_the_list_stands_above_chance() {
-        assert_eq!(Verdict::of(0.97, 0.01, Some(0.01)), Verdict::Secure);
-        assert_eq!(Verdict::of(0.97, 0.01, Some(0.1)), Verdict::Leading);
-        assert_eq!(Verdict::of(0.97, 0.01, Some(0.6)), Verdict::Open);
-        assert_eq!(Verdict::of(0.97, 0.01, None), Verdict::Leading);
-        assert_eq!(Verdict::of(0.4, 0.3, Some(0.01)), Verdict::Open);
-        assert_eq!(Verdict::of(0.4, 0.5, Some(0.01)), Verdict::Chance);
+        let of = |leading, other, p| Verdict::of(leading, other, 0.5, p);
+        assert_eq!(of(0.97, 0.01, Some(0.01)), Verdict::Secure);
+        assert_eq!(of(0.97, 0.01, Some(0.1)), Verdict::Leading);
+        assert_eq!(of(0.97, 0.01, Some(0.6)), Verdict::Open);
+        assert_eq!(of(0.97, 0.01, None), Verdict::Secure);
+        assert_eq!(of(0.4, 0.3, Some(0.01)), Verdict::Open);
+        assert_eq!(of(0.4, 0.5, Some(0.01)), Verdict::Chance);
+        assert_eq!(Verdict::of(0.97, 0.01, 3.0, Some(0.01)), Verdict::Leading);
+    }
+
+    #[test]
+    fn without_a_test_of_the_list_the_words_are_those_of_the_single_ranking() {
+        for leading in [0.1, 0.25, 0.35, 0.59, 0.61, 0.89, 0.95] {
+            for rivals in [0.2, 1.6, 2.5] {
+                let other = (1.0_f64 - leading) / 3.0;
+                let word = crate::assign::single::verdict(leading, other, rivals);
+                assert_eq!(Verdict::of(leading, other, rivals, None).word(), word, "{leading} {rivals}");
+            }
+        }
     }
 }
