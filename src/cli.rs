@@ -15,8 +15,14 @@ pub mod predict;
 /// `pick`: a band list from a spectrum.
 pub mod pick;
 
+/// What `assign` and `advise` share.
+pub mod ranking;
+
 /// `assign`: which level is which band.
 pub mod assign;
+
+/// `advise`: the next measurement.
+pub mod advise;
 
 /// `check`: faults and doubts of tables.
 pub mod check;
@@ -97,6 +103,8 @@ pub enum Command {
     Pick(pick::Pick),
     /// Which level is which band: ranked candidates with probabilities and chance matches.
     Assign(assign::Assign),
+    /// The next measurement for a band, with what each candidate predicts and cautions.
+    Advise(advise::Advise),
     /// Faults and doubts of mode tables.
     Check(check::Check),
     /// What is bundled, with sources.
@@ -136,6 +144,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> Outcome {
         Command::Predict(command) => command.run(),
         Command::Pick(command) => command.run(),
         Command::Assign(command) => command.run(),
+        Command::Advise(command) => command.run(),
         Command::Check(command) => command.run(),
         Command::Tables(command) => command.run(),
         Command::Symmetry(command) => command.run(),

@@ -70,7 +70,18 @@ fn equal_input_gives_equal_bytes_for_any_number_of_threads() {
     let with = |threads: &str| {
         Command::new(env!("CARGO_BIN_EXE_bandwright"))
             .env("RAYON_NUM_THREADS", threads)
-            .args(["assign", "epsomite", "--bands", "tests/data/gypsum_bands.csv", "--quanta", "3", "--format", "json"])
+            .args([
+                "assign",
+                "epsomite",
+                "--bands",
+                "tests/data/gypsum_bands.csv",
+                "--quanta",
+                "3",
+                "--trials",
+                "19",
+                "--format",
+                "json",
+            ])
             .output()
             .unwrap()
             .stdout
@@ -178,4 +189,79 @@ fn tables_lists_what_is_bundled_and_shows_one_whole() {
     assert!(listing.contains("gypsum") && listing.contains("Mg(ClO4)2.6H2O"));
     let whole = answer(&run(&["tables", "water"]));
     assert!(whole.contains("darling-dennison") && whole.contains("3657.053"), "{whole}");
+}
+
+#[test]
+fn a_spectrum_is_picked_and_assigned_in_one_go() {
+    let output = run(&[
+        "assign",
+        "gypsum",
+        "--spectrum",
+        "examples/spectra/gypsum_beckman.csv",
+        "--medium",
+        "air",
+        "--trials",
+        "39",
+        "--format",
+        "json",
+    ]);
+    let report: AssignReport = serde_json::from_str(&answer(&output)).unwrap_or_else(|_| panic!("{}", told(&output)));
+    let near = |cm1: f64| report.bands.iter().find(|b| (b.observed_cm1 - cm1).abs() < 25.0).unwrap();
+    // 1.944 µm is stretch + bend, 1.446 µm a stretch overtone (Bishop and others 2014: from memory).
+    assert_eq!(near(5146.0).families[0].family, ["oh-stretch", "hoh-bend"]);
+    assert_eq!(near(6920.0).families[0].family, ["2 oh-stretch"]);
+    assert!(report.coincidence.p_value <= 0.1 && report.coincidence.trials == 39, "{:?}", report.coincidence);
+    assert!(report.bands.iter().all(|b| b.sigma_cm1 > 0.0));
+}
+
+#[test]
+fn companions_of_the_puzzle_favour_sums_of_water_and_perchlorate() {
+    let bands = "examples/perchlorate/bands.csv";
+    let with = |companions: Option<&str>| {
+        let mut arguments = vec!["assign", "magnesium_perchlorate_hexahydrate", "--bands", bands, "--trials", "0"];
+        if let Some(file) = companions {
+            arguments.extend(["--companions", file]);
+        }
+        arguments.extend(["--format", "json"]);
+        let report: AssignReport = serde_json::from_str(&answer(&run(&arguments))).unwrap();
+        let both = |f: &&bandwright::render::report::FamilyRecord| {
+            ["H2O", "ClO4"].iter().all(|m| f.moieties.iter().any(|n| n == m))
+        };
+        let sum: f64 = report.bands[0].families.iter().filter(both).map(|f| f.probability).sum();
+        (sum, report)
+    };
+    let (alone, _) = with(None);
+    let (told, report) = with(Some("examples/perchlorate/companions.csv"));
+    assert!(told > alone + 0.05, "{alone} without, {told} with companions");
+    let reasons: Vec<&str> = report.bands[0].candidates[0].factors.iter().map(|f| f.reason.as_str()).collect();
+    assert!(reasons.iter().any(|r| r.contains("chloride hydrate")), "{reasons:?}");
+}
+
+#[test]
+fn advice_names_what_each_family_predicts_and_its_cautions() {
+    let output = run(&[
+        "advise",
+        "magnesium_perchlorate_hexahydrate",
+        "--bands",
+        "examples/perchlorate/bands.csv",
+        "--band",
+        "puzzle",
+        "--format",
+        "json",
+    ]);
+    assert_eq!(output.status.code(), Some(0), "{}", told(&output));
+    let report: serde_json::Value = serde_json::from_str(&answer(&output)).unwrap();
+    let list = report["measurements"].as_array().unwrap();
+    assert!(list.len() >= 6);
+    let bits: Vec<f64> = list.iter().map(|m| m["information_bits"].as_f64().unwrap()).collect();
+    assert!(bits.windows(2).all(|w| w[0] >= w[1]) && bits[0] > 0.2, "{bits:?}");
+    for measurement in list {
+        let caution = measurement["caution"].as_str().unwrap();
+        assert!(caution.contains("oxidiser") && caution.contains("local rules"), "{caution}");
+        assert!(!measurement["outcomes"].as_array().unwrap().is_empty());
+    }
+    assert_eq!(
+        run(&["advise", "gypsum", "--bands", "examples/efflorescence/crust.csv", "--band", "no"]).status.code(),
+        Some(2)
+    );
 }

@@ -8,7 +8,7 @@ use bandwright::library;
 use bandwright::mode::ModeTable;
 use bandwright::physics::anharmonicity::resolve;
 use bandwright::read::band_list;
-use bandwright::render::records::assign_report;
+use bandwright::render::records::{AssignInput, assign_report};
 use bandwright::render::report::AssignReport;
 
 fn table(name: &str) -> ModeTable {
@@ -24,7 +24,8 @@ fn assigned(name: &str, file: &str, quanta: u8) -> AssignReport {
     let request = Request { window: (low - 400.0, high + 400.0), quanta, budget: BUDGET, hot: None };
     let predicted: Vec<Predicted> = predict(&table, &model, &request).unwrap().value;
     let ranked = rank(&predicted, &bands, &Assumptions::default());
-    assign_report(&table, &model, &bands, quanta, &predicted, &ranked, 10, &[])
+    let input = AssignInput { table: &table, model: &model, bands: &bands, quanta, predicted: &predicted, top: 10 };
+    assign_report(&input, &ranked, &[])
 }
 
 /// Families of a band with probability, by band id.

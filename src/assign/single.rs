@@ -237,21 +237,3 @@ fn chance(levels: &[Predicted], visible: &[f64], band: &Band) -> Chance {
     }
     Chance { tolerance, by_order, weighted }
 }
-
-/// Verdict of a band in one of four words, and a sentence.
-///
-/// # Rule
-/// *secure*: the leading family has at least 0.9 and at most one and a half visible levels are expected there (weighted count, itself included);
-/// *leading*: at least 0.6; *no better than chance*: other origin leads, or the leading family has less than 0.3 and two
-/// or more rivals are expected; *open* otherwise. Thresholds are conventions of this project.
-pub fn verdict(leading: f64, other: f64, rivals: f64) -> &'static str {
-    if other >= leading || (leading < 0.3 && rivals >= 2.0) {
-        "no better than chance"
-    } else if leading >= 0.9 && rivals < 1.5 {
-        "secure"
-    } else if leading >= 0.6 {
-        "leading"
-    } else {
-        "open"
-    }
-}

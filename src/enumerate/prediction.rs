@@ -6,7 +6,7 @@ use super::walk::{Filter, TooManyLevels, levels_in};
 use crate::level::{Excitation, Level};
 use crate::mode::{ModeTable, Motion};
 use crate::note::{Note, Noted};
-use crate::physics::position::Model;
+use crate::physics::position::{Gradient, Model};
 use crate::physics::resonance;
 use crate::physics::strength::{ExpectedStrength, FORBIDDEN_STEP, Strengths};
 use crate::physics::symmetry::{Activity, PointGroup};
@@ -58,6 +58,8 @@ pub struct Predicted {
     pub raman: Activity,
     /// Zero-order shares of a mixed level, largest first; empty when not mixed.
     pub shares: Vec<(Level, f64)>,
+    /// Derivatives of the position of a mixed level; `None`: those of the model at `level`.
+    pub gradient: Option<Gradient>,
 }
 
 /// Symmetry of the levels of one table: its group and the species of its modes, where it gives them.
@@ -171,8 +173,12 @@ fn from_ground(
         .filter(|m| (low..=high).contains(&m.position))
         .map(|m| {
             let variance = m.variance(model);
-            let shares = if m.shares.len() > 1 { m.shares } else { Vec::new() };
-            describe(m.level, m.position, variance, shares, strengths, symmetry)
+            if m.shares.len() < 2 {
+                return describe(m.level, m.position, variance, Vec::new(), strengths, symmetry);
+            }
+            let mut mixed = describe(m.level, m.position, variance, m.shares, strengths, symmetry);
+            mixed.gradient = Some(m.gradient);
+            mixed
         })
         .collect())
 }
@@ -206,6 +212,7 @@ fn describe(
         reason: activity.reason,
         raman: activity.raman,
         shares,
+        gradient: None,
         level,
     }
 }

@@ -9,8 +9,10 @@ use super::report::{
     FamilyRecord, LevelRecord, MissingRecord, OtherOriginRecord, PredictReport, Share, TableSummary, UpdatedModeRecord,
     UsedConstant,
 };
+use crate::assign::chance::Coincidence;
 use crate::assign::joint::{BandAnswer, JointAnswer};
-use crate::assign::single::{Ranked, verdict};
+use crate::assign::single::Ranked;
+use crate::assign::verdict::Verdict;
 use crate::band::{Band, BandList};
 use crate::enumerate::prediction::{Predicted, family, family_text};
 use crate::level::Level;
@@ -181,17 +183,8 @@ pub fn predict_report(
 }
 
 /// The report of `assign` from bands ranked one by one.
-#[allow(clippy::too_many_arguments)]
-pub fn assign_report(
-    table: &ModeTable,
-    model: &Model,
-    bands: &BandList,
-    most_quanta: u8,
-    predicted: &[Predicted],
-    ranked: &[Ranked],
-    top: usize,
-    notes: &[Note],
-) -> AssignReport {
+pub fn assign_report(input: &AssignInput<'_>, ranked: &[Ranked], notes: &[Note]) -> AssignReport {
+    let AssignInput { table, model, bands, quanta: most_quanta, predicted, top } = *input;
     let records = bands.bands.iter().zip(ranked).map(|(band, answer)| {
         let mut families: BTreeMap<(Vec<String>, Vec<String>), f64> = BTreeMap::new();
         for offer in &answer.offers {
@@ -234,8 +227,8 @@ pub fn assign_report(
             })
             .collect();
         let leading = families.first().map_or(0.0, |f| f.probability);
-        let word = verdict(leading, answer.foreign, answer.chance.weighted);
-        let reason = verdict_sentence(families.first(), answer.chance.expected(), answer.chance.weighted);
+        let word = Verdict::of(leading, answer.foreign, None).word();
+        let reason = verdict_sentence(families.first(), answer.chance.expected(), answer.chance.weighted, None);
         BandRecord {
             band: band.id.clone(),
             observed_cm1: band.position.inverse_cm(),
@@ -302,11 +295,17 @@ pub struct AssignInput<'a> {
 }
 
 /// The report of `assign` from a joint answer.
-pub fn joint_report(input: &AssignInput<'_>, answer: &JointAnswer, notes: &[Note]) -> AssignReport {
-    let AssignInput { table, model, bands, quanta, predicted, top } = input;
+pub fn joint_report(
+    input: &AssignInput<'_>,
+    answer: &JointAnswer,
+    coincidence: Option<&Coincidence>,
+    notes: &[Note],
+) -> AssignReport {
+    let AssignInput { table, model, bands, quanta, predicted, top } = *input;
+    let list_p = coincidence.map(|c| c.p_value);
     let record = |(band, found): (&Band, &BandAnswer)| {
         let mut levels: Vec<LevelRecord> =
-            found.candidates.iter().take(*top).map(|c| level_record(table, model, &predicted[c.candidate])).collect();
+            found.candidates.iter().take(top).map(|c| level_record(table, model, &predicted[c.candidate])).collect();
         classify(&mut levels);
         let candidates = levels
             .into_iter()
@@ -337,7 +336,7 @@ pub fn joint_report(input: &AssignInput<'_>, answer: &JointAnswer, notes: &[Note
         let unlisted = (1.0 - told - foreign).max(0.0);
         let leading = families.first().map_or(0.0, |f| f.probability);
         let chance = &found.chance_matches;
-        let word = verdict(leading, foreign + unlisted, chance.weighted);
+        let word = Verdict::of(leading, foreign + unlisted, list_p).word();
         let tolerance = 2.0 * found.candidates.first().map_or(band.sigma, |c| c.position_sigma_cm1.hypot(band.sigma));
         BandRecord {
             band: band.id.clone(),
@@ -346,7 +345,7 @@ pub fn joint_report(input: &AssignInput<'_>, answer: &JointAnswer, notes: &[Note
             observed_um: band.position.vacuum_micrometres(),
             candidates,
             verdict: word.to_owned(),
-            verdict_reason: verdict_sentence(families.first(), chance.expected, chance.weighted),
+            verdict_reason: verdict_sentence(families.first(), chance.expected, chance.weighted, list_p),
             families,
             other_origin: OtherOriginRecord { probability: foreign + unlisted, foreign, unlisted },
             chance_matches: ChanceRecord {
@@ -362,13 +361,18 @@ pub fn joint_report(input: &AssignInput<'_>, answer: &JointAnswer, notes: &[Note
         table: summary(table),
         bands_from: bands.name.clone(),
         sample: bands.sample.clone(),
-        quanta: *quanta,
+        quanta,
         method:
             "all bands jointly: positions move fundamentals and constants, a level explains at most one band, strength \
                  models and inflated uncertainties are averaged over"
                 .to_owned(),
         bands: bands.bands.iter().zip(&answer.bands).map(record).collect(),
-        coincidence: CoincidenceRecord::default(),
+        coincidence: coincidence.map_or_else(CoincidenceRecord::default, |c| CoincidenceRecord {
+            p_value: c.p_value,
+            null: c.null.clone(),
+            trials: c.trials,
+            seed: c.seed,
+        }),
         updated_modes: answer
             .updated
             .iter()
@@ -412,16 +416,18 @@ fn grouped(motions: &[&'static str], moieties: &[String]) -> (Vec<String>, Vec<S
 }
 
 /// The sentence beside a verdict.
-fn verdict_sentence(leading: Option<&FamilyRecord>, expected: f64, weighted: f64) -> String {
-    match leading {
-        None => "no level of the table comes near; another substance, an artefact, or more quanta".to_owned(),
-        Some(f) => format!(
-            "{} on {} has {:.2}; {expected:.1} sums meet this position by chance, {weighted:.1} of them strong enough to be seen",
-            f.family.join(" + "),
-            f.moieties.join(", "),
-            f.probability
-        ),
-    }
+fn verdict_sentence(leading: Option<&FamilyRecord>, expected: f64, weighted: f64, list_p: Option<f64>) -> String {
+    let Some(f) = leading else {
+        return "no level of the table comes near; another substance, an artefact, or more quanta".to_owned();
+    };
+    let list = list_p.map_or(String::new(), |p| format!("; p of the whole list against chance {p:.3}"));
+    format!(
+        "{} on {} has {:.2}; {expected:.1} sums meet this position by chance, {weighted:.2} of them strong enough to be \
+         seen{list}",
+        f.family.join(" + "),
+        f.moieties.join(", "),
+        f.probability
+    )
 }
 
 /// How many different sets of moieties carry a family among the levels offered for a band.
