@@ -227,7 +227,7 @@ pub fn assign_report(input: &AssignInput<'_>, ranked: &[Ranked], notes: &[Note])
             })
             .collect();
         let leading = families.first().map_or(0.0, |f| f.probability);
-        let word = Verdict::of(leading, answer.foreign, None).word();
+        let word = Verdict::of(leading, answer.foreign, answer.chance.weighted, None).word();
         let reason = verdict_sentence(families.first(), answer.chance.expected(), answer.chance.weighted, None);
         BandRecord {
             band: band.id.clone(),
@@ -336,7 +336,7 @@ pub fn joint_report(
         let unlisted = (1.0 - told - foreign).max(0.0);
         let leading = families.first().map_or(0.0, |f| f.probability);
         let chance = &found.chance_matches;
-        let word = Verdict::of(leading, foreign + unlisted, list_p).word();
+        let word = Verdict::of(leading, foreign + unlisted, chance.weighted, list_p).word();
         let tolerance = 2.0 * found.candidates.first().map_or(band.sigma, |c| c.position_sigma_cm1.hypot(band.sigma));
         BandRecord {
             band: band.id.clone(),
