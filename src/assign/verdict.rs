@@ -75,15 +75,4 @@ mod tests {
         assert_eq!(of(0.4, 0.5, Some(0.01)), Verdict::Chance);
         assert_eq!(Verdict::of(0.97, 0.01, 3.0, Some(0.01)), Verdict::Leading);
     }
-
-    #[test]
-    fn without_a_test_of_the_list_the_words_are_those_of_the_single_ranking() {
-        for leading in [0.1, 0.25, 0.35, 0.59, 0.61, 0.89, 0.95] {
-            for rivals in [0.2, 1.6, 2.5] {
-                let other = (1.0_f64 - leading) / 3.0;
-                let word = crate::assign::single::verdict(leading, other, rivals);
-                assert_eq!(Verdict::of(leading, other, rivals, None).word(), word, "{leading} {rivals}");
-            }
-        }
-    }
 }
