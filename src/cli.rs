@@ -23,6 +23,14 @@ pub mod assign;
 
 /// `advise`: the next measurement.
 pub mod advise;
+/// `exchange`: isotopologues.
+pub mod exchange;
+
+/// `constants`: from a force field.
+pub mod constants;
+
+/// A mode table as an answer.
+pub mod table_output;
 
 /// `check`: faults and doubts of tables.
 pub mod check;
@@ -105,6 +113,10 @@ pub enum Command {
     Assign(assign::Assign),
     /// The next measurement for a band, with what each candidate predicts and cautions.
     Advise(advise::Advise),
+    /// Mode table of an isotopologue.
+    Exchange(exchange::Exchange),
+    /// Anharmonic constants from a cubic and quartic force field.
+    Constants(constants::Constants),
     /// Faults and doubts of mode tables.
     Check(check::Check),
     /// What is bundled, with sources.
@@ -145,6 +157,8 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> Outcome {
         Command::Pick(command) => command.run(),
         Command::Assign(command) => command.run(),
         Command::Advise(command) => command.run(),
+        Command::Exchange(command) => command.run(),
+        Command::Constants(command) => command.run(),
         Command::Check(command) => command.run(),
         Command::Tables(command) => command.run(),
         Command::Symmetry(command) => command.run(),

@@ -21,6 +21,9 @@ pub mod perturbation;
 /// Strengths of two-quanta transitions from a force field and dipole derivatives.
 pub mod transition_moment;
 
+/// Whether the constants of a water belong to one picture.
+pub mod pictures;
+
 /// The mode table of an isotopologue.
 pub mod isotopes;
 

@@ -6,7 +6,8 @@ use super::Failure;
 use crate::library;
 use crate::mode::ModeTable;
 use crate::note::Noted;
-use crate::read::{Complaint, constants, delimited, mode_table};
+use crate::physics::pictures::mixed_pictures;
+use crate::read::{Complaint, Complaints, constants, delimited, mode_table};
 
 /// Loads a mode table with its constants: a file when `name` is one, else the bundled table of that name.
 ///
@@ -51,7 +52,11 @@ pub fn load_table_with(name: &str, constants_file: Option<&Path>) -> Result<Note
         noted.value.constants = constants.value;
         noted.notes.extend(constants.notes);
     }
-    Ok(noted)
+    let mixed = mixed_pictures(&noted.value).into_iter().map(|found| {
+        let expected = "constants of one picture for the O–H stretches of a water";
+        Complaint::about_file(&noted.value.name, expected, &noted.value.moieties[found.moiety].name).hint(found.reason)
+    });
+    Ok(Complaints(mixed.collect()).or(noted)?)
 }
 
 /// `NAME.constants.csv` beside `NAME.csv`.

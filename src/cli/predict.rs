@@ -6,6 +6,8 @@ use super::output::{Format, OutputOptions};
 use super::{Failure, Outcome, input, tell};
 use crate::enumerate::prediction::{BUDGET, Request, predict};
 use crate::physics::anharmonicity::resolve;
+use crate::physics::resonance;
+use crate::physics::temperature::at_temperature;
 use crate::quantity::{Medium, Window};
 use crate::render::{predict as render, records};
 
@@ -23,6 +25,9 @@ pub struct Predict {
     /// Most quanta of a level.
     #[arg(long, default_value_t = 3, value_parser = clap::value_parser!(u8).range(1..=9))]
     pub quanta: u8,
+    /// Move the table to this temperature, K: shifts and widths by motion, with their uncertainty.
+    #[arg(long, value_name = "K")]
+    pub temperature: Option<f64>,
     /// Add hot transitions, at the table's temperature or 298 K.
     #[arg(long)]
     pub hot: bool,
@@ -45,9 +50,18 @@ impl Predict {
         let window = Window::from_text(&self.window, Medium::Vacuum).map_err(|e| Failure::Usage(e.to_string()))?;
         let loaded = input::load_table_with(&self.table, self.constants.as_deref())?;
         let mut notes = loaded.notes;
-        let table = loaded.value;
+        let mut table = loaded.value;
+        if let Some(kelvin) = self.temperature {
+            if !(kelvin.is_finite() && (1.0..=1000.0).contains(&kelvin)) {
+                return Err(Failure::Usage(format!("--temperature {kelvin} is not between 1 and 1000 K")));
+            }
+            let moved = at_temperature(&table, kelvin);
+            table = moved.value;
+            notes.extend(moved.notes);
+        }
         let model = resolve(&table);
         notes.extend(model.notes);
+        notes.extend(resonance::doubts(&model.value, &table));
         let request = Request {
             window: (window.low(), window.high()),
             quanta: self.quanta,

@@ -342,6 +342,12 @@ fn by_motion(table: &ModeTable, index: ModeIndex, what: &Exchange, notes: &mut V
     }
 }
 
+/// Coupling λ of the two O–H of one water, cm⁻¹, as in the defaults (uncertainty 15 cm⁻¹).
+const COUPLING: f64 = -45.0;
+
+/// Two stretches closer than 2 (|λ| + σ) are those of equal bonds, cm⁻¹.
+const EQUAL_BONDS: f64 = 120.0;
+
 /// Two coupled O–H bonds of one water: their difference and their coupling scale differently, so the pair is treated as
 /// a whole.
 fn stretches(
@@ -361,8 +367,9 @@ fn stretches(
     let &[low, high] = pair.as_slice() else { return };
     let nu = |i: ModeIndex| table.modes[i].wavenumber.inverse_cm();
     let (nu_low, nu_high) = (nu(low), nu(high));
-    // λ of the defaults; a smaller splitting cuts it down.
-    let bonds = LocalPair::observed(nu_low, nu_high, omega_x(nu_low).0, omega_x(nu_high).0, -45.0);
+    // A splitting that λ alone can explain within its uncertainty is taken for the coupling of equal bonds.
+    let lambda = if nu_high - nu_low < EQUAL_BONDS { 0.5 * (nu_low - nu_high) } else { COUPLING };
+    let bonds = LocalPair::observed(nu_low, nu_high, omega_x(nu_low).0, omega_x(nu_high).0, lambda);
     let heavy = |bond: f64| local_pair::deuterated_stretch(bond, omega_x(bond).0);
     let deuterons = bonds.bond.map(heavy);
     let set = |ratios: &mut [Ratio], i: ModeIndex, after: f64, source: &str| {
@@ -379,7 +386,7 @@ fn stretches(
         }
         Extent::Half => {
             // One O–D and one O–H, uncoupled: the lower mode of the table becomes O–D.
-            let same = bonds.bond[1] - bonds.bond[0] < 10.0;
+            let same = nu_high - nu_low < EQUAL_BONDS;
             let (proton, deuteron) = if same {
                 let mean = 0.5 * (bonds.bond[0] + bonds.bond[1]);
                 (mean, heavy(mean))
