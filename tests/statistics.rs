@@ -160,8 +160,8 @@ fn conditioning_in_level_space_equals_the_update_of_the_parameters() {
     let ab = slopes(&model, AB, &mut numbers);
     let known = Conditioned::new(vec![10.0], |_, _| ab.norm_squared() + 64.0);
     let printed = [
-        (Parameter::Nu(0), 3405.952_38, 9.543_14, 15.0, 3400.0),
-        (Parameter::Nu(1), 1640.661_38, 4.831_83, 5.0, 1640.0),
+        (Parameter::Nu(0), 3_405.952_38, 9.543_14, 15.0, 3400.0),
+        (Parameter::Nu(1), 1_640.661_38, 4.831_83, 5.0, 1640.0),
         (Parameter::X(1, 0), -18.306_88, 7.291_37, 8.0, -20.0),
     ];
     // The Kalman update of the parameters, written out: gain = C a / (a′Ca + s²).

@@ -75,6 +75,9 @@ pub struct Coincidence {
     pub quanta: u8,
 }
 
+/// A mode's motion, the kind of its moiety, and its fundamental, cm⁻¹.
+type Known = (Motion, MoietyKind, f64);
+
 /// The words of [`Coincidence::null`].
 pub const NULL_WORDS: &str = "mode tables of the same make-up, each fundamental redrawn from the range of its motion";
 
@@ -94,7 +97,7 @@ struct Skeleton {
 /// Ranges of the fundamentals of each mode's motion in the bundled tables, by kind of moiety; by motion alone where a
 /// kind has fewer than three; the mode's own position ± 15 % where the bundled tables have none.
 pub fn bundled_ranges(table: &ModeTable) -> Vec<(f64, f64)> {
-    let mut known: Vec<(Motion, MoietyKind, f64)> = Vec::new();
+    let mut known: Vec<Known> = Vec::new();
     for name in tables::names() {
         let Some(Ok(bundled)) = tables::bundled(name) else { continue };
         let natural = bundled.value.isotopes.is_empty();
@@ -102,7 +105,7 @@ pub fn bundled_ranges(table: &ModeTable) -> Vec<(f64, f64)> {
             known.push((mode.motion, bundled.value.moiety_of(index).kind, mode.wavenumber.inverse_cm()));
         }
     }
-    let span = |keep: &dyn Fn(&(Motion, MoietyKind, f64)) -> bool| -> Option<(f64, f64)> {
+    let span = |keep: &dyn Fn(&Known) -> bool| -> Option<(f64, f64)> {
         let list: Vec<f64> = known.iter().filter(|k| keep(k)).map(|k| k.2).collect();
         let low = list.iter().copied().fold(f64::INFINITY, f64::min);
         let high = list.iter().copied().fold(0.0, f64::max);
