@@ -38,6 +38,9 @@ pub mod check;
 /// `symmetry`: selection rules.
 pub mod symmetry;
 
+/// `modes`: normal modes and a mode table from a Hessian.
+pub mod modes;
+
 /// `tables`: what is bundled.
 pub mod tables;
 
@@ -119,6 +122,8 @@ pub enum Command {
     Constants(constants::Constants),
     /// Faults and doubts of mode tables.
     Check(check::Check),
+    /// Normal modes, motions and a mode table from a Hessian.
+    Modes(modes::Modes),
     /// What is bundled, with sources.
     Tables(tables::Tables),
     /// Selection rules: groups, species, products, powers, site and factor groups.
@@ -160,6 +165,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> Outcome {
         Command::Exchange(command) => command.run(),
         Command::Constants(command) => command.run(),
         Command::Check(command) => command.run(),
+        Command::Modes(command) => command.run(),
         Command::Tables(command) => command.run(),
         Command::Symmetry(command) => command.run(),
         Command::Completions(command) => command.run(),

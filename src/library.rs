@@ -6,5 +6,8 @@ pub mod defaults;
 /// Bundled mode tables.
 pub mod tables;
 
+/// Scale factors from harmonic wavenumbers to fundamentals.
+pub mod scale_factors;
+
 pub use defaults::{Contact, Defaults, Role};
 pub use tables::{bundled, names};

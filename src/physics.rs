@@ -35,3 +35,24 @@ pub mod resonance;
 
 /// Point groups.
 pub mod symmetry;
+
+/// Elements and isotopes.
+pub mod elements;
+
+/// Harmonic normal modes from a Hessian.
+pub mod normal_modes;
+
+/// Moieties from a geometry.
+pub mod moieties;
+
+/// What each normal mode does.
+pub mod motion;
+
+/// Rotations and reflections of a geometry.
+pub mod geometry_symmetry;
+
+/// Faults of a Hessian.
+pub mod hessian_faults;
+
+/// A mode table from normal modes.
+pub mod computed_table;

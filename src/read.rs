@@ -33,4 +33,10 @@ mod jcamp_dx;
 /// Cubic and quartic force fields as JSON.
 pub mod force_field;
 
+/// Quantum-chemical results with a Hessian.
+pub mod qcschema;
+
+/// Places in JSON text.
+mod json_place;
+
 pub use error::{Complaint, Complaints, Location};

@@ -23,3 +23,6 @@ pub mod band_list;
 
 /// `pick` in every format.
 pub mod pick;
+
+/// `modes` as text and JSON.
+pub mod modes;
