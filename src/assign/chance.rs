@@ -220,7 +220,8 @@ fn central(models: &[StrengthModel]) -> StrengthModel {
 
 fn skeletons(model: &Model, table: &ModeTable, prior: &StrengthPrior, quanta: u8) -> Vec<Skeleton> {
     let mut list = Vec::new();
-    let mut stack: Vec<(Vec<(usize, u8)>, usize, u8)> = vec![(Vec::new(), 0, quanta)];
+    let start: Vec<(usize, u8)> = Vec::new();
+    let mut stack = vec![(start, 0, quanta)];
     while let Some((now, from, left)) = stack.pop() {
         for mode in from..table.modes.len() {
             for v in 1..=left {

@@ -263,18 +263,16 @@ pub fn read(file: &str, text: &str) -> Result<Noted<ForceField>, Complaints> {
             wrong(format!("`zeta.{name}`: {n} rows of {n} numbers"), format!("{} rows", matrix.len()), "");
             continue;
         }
-        for i in 0..n {
-            for j in i..n {
-                let (z, back) = (matrix[i][j], matrix[j][i]);
-                if !((z + back).abs() < 1.0e-6 && z.abs() < 1.0 + 1.0e-6) {
-                    wrong(
-                        format!("`zeta.{name}`: an antisymmetric matrix of numbers from −1 to 1"),
-                        format!("({}, {}) = {z}, ({}, {}) = {back}", i + 1, j + 1, j + 1, i + 1),
-                        "",
-                    );
-                } else if i < j && z != 0.0 {
-                    field.zeta[axis].insert((i, j), z);
-                }
+        for (i, j) in (0..n).flat_map(|i| (i..n).map(move |j| (i, j))) {
+            let (z, back) = (matrix[i][j], matrix[j][i]);
+            if !((z + back).abs() < 1.0e-6 && z.abs() < 1.0 + 1.0e-6) {
+                wrong(
+                    format!("`zeta.{name}`: an antisymmetric matrix of numbers from −1 to 1"),
+                    format!("({}, {}) = {z}, ({}, {}) = {back}", i + 1, j + 1, j + 1, i + 1),
+                    "",
+                );
+            } else if i < j && z != 0.0 {
+                field.zeta[axis].insert((i, j), z);
             }
         }
     }
