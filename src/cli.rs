@@ -1,7 +1,7 @@
 //! The command line: a file per command; arguments become library types before anything runs.
 //!
 //! Every command is a clap `Args` struct with `run(self) -> Result<Outcome, Failure>` in its own file below `cli/`, and
-//! one variant of [`Command`]. Data goes to standard output or `--out FILE`; notes and progress to standard error.
+//! one variant of `Command`. Data goes to standard output or `--out FILE`; notes and progress to standard error.
 
 /// Shared options: output format and destination.
 pub mod output;

@@ -29,7 +29,7 @@ fn assigned(name: &str, file: &str, quanta: u8) -> AssignReport {
 }
 
 /// Families of a band with probability, by band id.
-fn families<'r>(report: &'r AssignReport, band: &str) -> Vec<(String, f64)> {
+fn families(report: &AssignReport, band: &str) -> Vec<(String, f64)> {
     let record = report.bands.iter().find(|b| b.band == band).unwrap();
     record.families.iter().map(|f| (f.family.join(" + "), f.probability)).collect()
 }

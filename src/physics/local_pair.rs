@@ -4,7 +4,7 @@
 //! Diagonal terms v ν − ωx v (v − 1) a bond (ν: its bare 0→1 wavenumber), coupling λ √((vᵢ + 1) vⱼ) between states that
 //! exchange one quantum; blocks of equal v₁ + v₂ are diagonalised. Model: Mortensen, Henry & Mohammadi, J. Chem. Phys. 75,
 //! 4800 (1981) (from memory); Child & Lawton, Faraday Discuss. Chem. Soc. 71, 273 (1981). For equal bonds it has the
-//! spectrum of a normal-mode pair with a Darling-Dennison term ([`NormalModePair`]); relations of Mills & Robiette,
+//! spectrum of a normal-mode pair with a Darling-Dennison term (`NormalModePair`); relations of Mills & Robiette,
 //! Mol. Phys. 56, 743 (1985) (from memory), checked to 10⁻⁷ in `tests/anharmonic.rs`.
 //!
 //! A pair is either described by its bonds or by normal-mode constants such as x₁₃ = −165 cm⁻¹, never by both.

@@ -13,7 +13,7 @@
 //! ```
 //!
 //! so that a resonant one, 1/(ωᵢ + ωⱼ − ω_k), is left out exactly and its coupling handed to the polyads
-//! ([`super::resonance`]). Degenerate modes enter by real components (a, b) and leave as one mode: x_tt = x_aa,
+//! (`physics::resonance`). Degenerate modes enter by real components (a, b) and leave as one mode: x_tt = x_aa,
 //! g_tt = ½ x_ab − x_aa, x_st = x_sa. A linear molecule has no rotational constant about its axis.
 //!
 //! Darling-Dennison elements: Lehmann, Mol. Phys. 66, 1129 (1989) (from memory); where a Fermi term is kept out, its

@@ -14,7 +14,7 @@
 //!
 //! A degenerate mode b of a 2:1 term with a non-degenerate a is exact by angular momentum, for two and three components.
 //! For other terms with degenerate modes (both degenerate, 1:1:1, 2:2, 1:1) the coupling is a tensor; these elements are
-//! those of one stretched component, an approximation: [`doubts`] names them.
+//! those of one stretched component, an approximation: `doubts` names them.
 //!
 //! A polyad is the closure of a level under the resonances: partners outside the given list enter the block. Blocks are
 //! diagonalised with nalgebra. dE/dθ follows from the eigenvector (Hellmann-Feynman), so uncertainty passes through the
