@@ -8,3 +8,6 @@ pub mod walk;
 
 /// Exact counts.
 pub mod count;
+
+/// Evidence, best levels and chance matches over every level.
+pub mod search;

@@ -13,7 +13,7 @@ use crate::mode::ModeIndex;
 use crate::physics::position::{Model, Rung};
 
 /// Which levels are wanted; everything by default.
-#[derive(Clone, Debug, Default)]
+#[derive(Clone, Debug, Default, PartialEq, Eq)]
 pub struct Filter {
     /// Only levels whose quanta all lie in these modes; one entry a mode.
     pub modes: Option<Vec<bool>>,
@@ -25,7 +25,8 @@ impl Filter {
         Self { modes: Some((0..count).map(wanted).collect()) }
     }
 
-    fn takes(&self, mode: ModeIndex) -> bool {
+    /// Whether quanta in this mode are wanted.
+    pub fn takes(&self, mode: ModeIndex) -> bool {
         self.modes.as_ref().is_none_or(|list| list.get(mode).copied().unwrap_or(false))
     }
 }
