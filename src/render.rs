@@ -26,3 +26,8 @@ pub mod pick;
 
 /// `modes` as text and JSON.
 pub mod modes;
+/// What the picture formats share.
+pub mod drawing;
+
+/// One self-contained page.
+pub mod html;

@@ -4,7 +4,7 @@ use super::output::{Format, OutputOptions};
 use super::ranking::RankingArguments;
 use super::{Failure, Outcome, tell};
 use crate::assign::single::{Assumptions, rank};
-use crate::render::{assign as render, records};
+use crate::render::{assign as render, html, records};
 
 /// Ranks the levels of a table as candidates for observed bands.
 #[derive(Debug, clap::Args)]
@@ -53,7 +53,8 @@ impl Assign {
             Format::Table => render::table(&report),
             Format::Csv => render::csv(&report),
             Format::Json => render::json(&report),
-            Format::Html | Format::Svg => return Err(self.output.refuse("assign", "table, csv, json")),
+            Format::Html => html::assign(&report, None),
+            Format::Svg => return Err(self.output.refuse("assign", "table, csv, json, html")),
         };
         self.output.deliver(text.as_bytes(), &self.ranking.inputs())?;
         let unexplained =

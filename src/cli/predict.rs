@@ -9,7 +9,7 @@ use crate::physics::anharmonicity::resolve;
 use crate::physics::resonance;
 use crate::physics::temperature::at_temperature;
 use crate::quantity::{Medium, Window};
-use crate::render::{predict as render, records};
+use crate::render::{html, predict as render, records};
 
 /// Where a table absorbs: levels, uncertainty, species, strength class.
 #[derive(Debug, clap::Args)]
@@ -87,7 +87,8 @@ impl Predict {
             Format::Table => render::table(&report),
             Format::Csv => render::csv(&report),
             Format::Json => render::json(&report),
-            Format::Html | Format::Svg => return Err(self.output.refuse("predict", "table, csv, json")),
+            Format::Html => html::predict(&report),
+            Format::Svg => return Err(self.output.refuse("predict", "table, csv, json, html")),
         };
         let inputs: Vec<&Path> =
             [Some(Path::new(&self.table)), self.constants.as_deref()].into_iter().flatten().collect();
