@@ -26,6 +26,7 @@ pub mod pick;
 
 /// `modes` as text and JSON.
 pub mod modes;
+
 /// What the picture formats share.
 pub mod drawing;
 

@@ -150,8 +150,7 @@ fn the_answer_is_the_same_bytes_for_any_number_of_threads() {
     }
     model.nu_sigma.fill(5.0);
     let prior = random_prior(&mut random, 30);
-    let bands: Vec<Target> =
-        (0..12).map(|k| Target { position: 4_000.0 + 300.0 * f64::from(k), sigma: 8.0 }).collect();
+    let bands: Vec<Target> = (0..12).map(|k| Target { position: 4_000.0 + 300.0 * f64::from(k), sigma: 8.0 }).collect();
     let question = Question { quanta: 4, best: 20, tolerance: 10.0, best_only: false, filter: Filter::default() };
     let with = |threads| {
         let pool = rayon::ThreadPoolBuilder::new().num_threads(threads).build().unwrap();

@@ -4,6 +4,9 @@ use super::output::{Format, OutputOptions};
 use super::ranking::RankingArguments;
 use super::{Failure, Outcome, tell};
 use crate::assign::single::{Assumptions, rank};
+use crate::band::Spectrum;
+use crate::observe::Picked;
+use crate::render::drawing::PlottedSpectrum;
 use crate::render::{assign as render, html, records};
 
 /// Ranks the levels of a table as candidates for observed bands.
@@ -53,12 +56,29 @@ impl Assign {
             Format::Table => render::table(&report),
             Format::Csv => render::csv(&report),
             Format::Json => render::json(&report),
-            Format::Html => html::assign(&report, None),
+            Format::Html => {
+                let plotted = prepared.observed.as_ref().map(|(spectrum, picked)| plotted(spectrum, picked));
+                html::assign(&report, plotted.as_ref())
+            }
             Format::Svg => return Err(self.output.refuse("assign", "table, csv, json, html")),
         };
         self.output.deliver(text.as_bytes(), &self.ranking.inputs())?;
         let unexplained =
             report.bands.iter().any(|b| b.families.first().is_none_or(|f| f.probability <= b.other_origin.probability));
         Ok(if unexplained { Outcome::Unexplained } else { Outcome::Done })
+    }
+}
+
+/// The measured spectrum over its continuum, as far as the picked window goes.
+fn plotted(spectrum: &Spectrum, picked: &Picked) -> PlottedSpectrum {
+    let inside = |x: f64| picked.window.contains(x);
+    let (wavenumbers, ordinates): (Vec<f64>, Vec<f64>) =
+        spectrum.wavenumbers.iter().zip(&spectrum.ordinates).filter(|(x, _)| inside(**x)).unzip();
+    PlottedSpectrum {
+        name: spectrum.name.clone(),
+        continuum: picked.continuum.over(&wavenumbers),
+        wavenumbers,
+        ordinates,
+        ordinate: format!("{:?}", spectrum.ordinate).to_lowercase(),
     }
 }
