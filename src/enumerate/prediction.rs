@@ -1,5 +1,7 @@
 //! Predicted transitions of a table in a window: position, uncertainty, strength, width, activity.
 
+use std::borrow::Cow;
+
 use rayon::prelude::*;
 
 use super::walk::{Filter, TooManyLevels, levels_in};
@@ -53,7 +55,7 @@ pub struct Predicted {
     /// Infrared activity.
     pub infrared: Activity,
     /// Why.
-    pub reason: String,
+    pub reason: Cow<'static, str>,
     /// Raman activity.
     pub raman: Activity,
     /// Zero-order shares of a mixed level, largest first; empty when not mixed.
@@ -76,7 +78,7 @@ pub struct LevelActivity {
     /// Infrared activity.
     pub infrared: Activity,
     /// Why.
-    pub reason: String,
+    pub reason: Cow<'static, str>,
     /// Raman activity.
     pub raman: Activity,
 }
@@ -92,10 +94,10 @@ impl LevelSymmetry {
 
     /// Species and activities of the transition from the ground level.
     pub fn activity(&self, level: &Level) -> LevelActivity {
-        let unknown = |reason: &str| LevelActivity {
+        let unknown = |reason: &'static str| LevelActivity {
             species: Vec::new(),
             infrared: Activity::Unknown,
-            reason: reason.to_owned(),
+            reason: Cow::Borrowed(reason),
             raman: Activity::Unknown,
         };
         let Some(group) = &self.group else { return unknown("the table names no point group") };
@@ -110,7 +112,7 @@ impl LevelSymmetry {
         let infrared = content.iter().any(|(irrep, _)| group.infrared(*irrep));
         let raman = content.iter().any(|(irrep, _)| group.raman(*irrep));
         let word = |yes| if yes { Activity::Allowed } else { Activity::Forbidden };
-        let reason = if infrared { String::new() } else { group.forbidden_reason(&factors) };
+        let reason = if infrared { Cow::Borrowed("") } else { Cow::Owned(group.forbidden_reason(&factors)) };
         LevelActivity {
             species: content.iter().map(|(irrep, n)| (group.irrep_name(*irrep).to_owned(), *n)).collect(),
             infrared: word(infrared),

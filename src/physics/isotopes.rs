@@ -234,6 +234,9 @@ pub fn exchange(table: &ModeTable, what: &Exchange) -> Noted<ModeTable> {
         return Noted { value: new, notes };
     }
     new.isotopes.push(what.to_string());
+    if what.to_string() == "H=D" {
+        new.formula = table.formula.replace("H2O", "D2O");
+    }
     new.title = format!("{}, {what}", if table.title.is_empty() { &table.name } else { &table.title });
     new.name = format!("{}_{}", table.name, what.to_string().replace(['=', '(', ')'], "-").trim_end_matches('-'));
     // Derived numbers are no measurements.

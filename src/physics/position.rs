@@ -259,8 +259,21 @@ impl Model {
 
     /// Variance of the position: a′Ca + private part, cm⁻².
     pub fn variance(&self, level: &Level) -> f64 {
-        let shared: f64 = self.gradient(level).iter().map(|&(p, a)| (a * self.sigma(p)).powi(2)).sum();
-        shared + self.private_variance(level)
+        let list = level.excitations();
+        if list.iter().any(|e| self.g[usize::from(e.mode)].is_some()) {
+            let shared: f64 = self.gradient(level).iter().map(|&(p, a)| (a * self.sigma(p)).powi(2)).sum();
+            return shared + self.private_variance(level);
+        }
+        // The common case without the detour over a gradient: large tables hold half a million levels.
+        let mut sum = 0.0;
+        for (k, e) in list.iter().enumerate() {
+            let (i, v) = (usize::from(e.mode), f64::from(e.quanta));
+            sum += (v * self.nu_sigma[i]).powi(2) + (v * (v - 1.0) * self.x(i, i).sigma).powi(2);
+            for other in &list[..k] {
+                sum += (v * f64::from(other.quanta) * self.x(i, usize::from(other.mode)).sigma).powi(2);
+            }
+        }
+        sum + self.private_variance(level)
     }
 
     /// Covariance of two levels through shared parameters, cm⁻² (private parts excluded).

@@ -81,7 +81,7 @@ pub fn level_record(table: &ModeTable, model: &Model, p: &Predicted) -> LevelRec
         moieties: moieties.into_iter().map(|m| table.moieties[m].name.clone()).collect(),
         species: p.species.iter().map(|(name, n)| if *n == 1 { name.clone() } else { format!("{n}{name}") }).collect(),
         ir: p.infrared.word().to_owned(),
-        ir_reason: p.reason.clone(),
+        ir_reason: p.reason.clone().into_owned(),
         raman: p.raman.word().to_owned(),
         strength_log10: p.strength.log10,
         strength_sigma: p.strength.sigma,
