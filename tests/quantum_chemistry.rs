@@ -70,7 +70,7 @@ fn computed(record: &HessianRecord, exchanges: &[Exchange]) -> Computed {
 
 /// Ranges of modes whose wavenumbers touch within 0.05 cm⁻¹: their eigenvectors are free up to a rotation.
 fn groups(list: &[Checked]) -> Vec<std::ops::Range<usize>> {
-    let mut groups: Vec<std::ops::Range<usize>> = Vec::from([0..1]);
+    let mut groups: Vec<std::ops::Range<usize>> = std::iter::once(0..1).collect();
     for k in 1..list.len() {
         if list[k].wavenumber - list[k - 1].wavenumber < 0.05 {
             groups.last_mut().unwrap().end = k + 1;

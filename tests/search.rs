@@ -73,7 +73,7 @@ fn random_model(random: &mut ChaCha8Rng, trial: usize) -> Model {
         }
     }
     // Rarely, coupled angular momenta.
-    if trial % 11 == 0 && n > 2 && model.degeneracy[0] > 1 && model.degeneracy[1] > 1 {
+    if trial.is_multiple_of(11) && n > 2 && model.degeneracy[0] > 1 && model.degeneracy[1] > 1 {
         model.g_pairs.push((0, 1, sourced(2.0, 0.5)));
     }
     model

@@ -125,7 +125,7 @@ mod tests {
             offset_of(text, &[Step::Key("b"), Step::Key("c"), Step::Index(2), Step::Key("x")]).expect("it is there");
         assert_eq!(&text[at..=at], "4");
         let (line, column, _) = line_and_column(text, at);
-        assert_eq!((line, column), (2, 29));
+        assert_eq!((line, column), (2, 32));
         assert_eq!(offset_of(text, &[Step::Key("z")]), None);
         assert_eq!(offset_of(text, &[Step::Key("b"), Step::Key("c"), Step::Index(9)]), None);
     }
