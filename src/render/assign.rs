@@ -7,6 +7,9 @@ use super::text::{Align, columns, probability, wrapped};
 /// Factors shown per candidate in the text form.
 const FACTORS: usize = 4;
 
+/// Part of its uncertainty that a mode must move to be shown in the text form; JSON has all.
+const MOVED: f64 = 0.3;
+
 /// Families shown per band in the text form.
 const FAMILIES: usize = 5;
 
@@ -154,6 +157,7 @@ pub fn table(report: &AssignReport) -> String {
         let rows: Vec<Vec<String>> = report
             .updated_modes
             .iter()
+            .filter(|m| m.flagged || (m.after_cm1 - m.before_cm1).abs() >= MOVED * m.before_sigma_cm1)
             .map(|m| {
                 vec![
                     m.mode.clone(),
