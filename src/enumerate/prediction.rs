@@ -142,9 +142,12 @@ pub fn predict(table: &ModeTable, model: &Model, request: &Request) -> Result<No
         )));
         list.extend(hot);
     }
-    list.sort_by(|a, b| {
-        a.position.total_cmp(&b.position).then_with(|| a.level.cmp(&b.level)).then_with(|| a.from.cmp(&b.from))
-    });
+    // The walk gives its levels in this order already; mixing and hot transitions change it.
+    if request.hot.is_some() || !model.resonances.is_empty() {
+        list.sort_by(|a, b| {
+            a.position.total_cmp(&b.position).then_with(|| a.level.cmp(&b.level)).then_with(|| a.from.cmp(&b.from))
+        });
+    }
     Ok(Noted { value: list, notes })
 }
 

@@ -212,9 +212,7 @@ pub fn levels_in(
     }
     let mut found: Vec<Found> = parts.into_iter().flatten().collect();
     // The canonical position is that of the model, so that no sum order of the walk shows.
-    for one in &mut found {
-        one.position = model.position(&one.level);
-    }
+    found.par_iter_mut().for_each(|one| one.position = model.position(&one.level));
     found.par_sort_by(|a, b| a.position.total_cmp(&b.position).then_with(|| a.level.cmp(&b.level)));
     Ok(found)
 }

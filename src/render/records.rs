@@ -187,7 +187,8 @@ pub fn assign_report(input: &AssignInput<'_>, ranked: &[Ranked], notes: &[Note])
     let AssignInput { table, model, bands, quanta: most_quanta, predicted, top } = *input;
     let records = bands.bands.iter().zip(ranked).map(|(band, answer)| {
         let mut families: BTreeMap<(Vec<String>, Vec<String>), f64> = BTreeMap::new();
-        for offer in &answer.offers {
+        // Offers below this cannot show in any digit, and large tables have tens of thousands of them.
+        for offer in answer.offers.iter().filter(|o| o.probability > 1.0e-15) {
             *families.entry(family_key(table, &predicted[offer.level].level)).or_default() += offer.probability;
         }
         let mut families: Vec<FamilyRecord> = families
